@@ -1,0 +1,2 @@
+export type { AllPassPair } from './all-pass-pair.ts';
+export { synthesiseAllPassPair } from './all-pass-pair.ts';
