@@ -1,8 +1,8 @@
 /** Rows as the rest of the server sees them: camelCase, dates as Date, JSON parsed. Ids here are bare uuids; the wire adds prefixes. */
 import type { ChipModelInput } from '../../schema/chip.ts';
 import type { Problem } from '../../schema/problem.ts';
-import type { Design } from '../../src/design/index.ts';
 import type { Setting } from '../../src/chip/index.ts';
+import type { Design } from '../../src/design/index.ts';
 
 export type Role = 'READER' | 'DESIGNER' | 'INSTRUMENT' | 'ADMIN';
 export type ActorKind = 'PERSON' | 'INSTRUMENT' | 'SYSTEM';

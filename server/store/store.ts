@@ -5,8 +5,8 @@
  */
 import type { ChipModelInput } from '../../schema/chip.ts';
 import type { Problem } from '../../schema/problem.ts';
-import type { Design } from '../../src/design/index.ts';
 import type { Setting } from '../../src/chip/index.ts';
+import type { Design } from '../../src/design/index.ts';
 import type {
   Acting,
   ActorKind,
@@ -53,9 +53,20 @@ export interface Who {
   /** Creates the actor by name if need be. NAME_TAKEN: the name exists with another kind. */
   createToken(
     by: Acting,
-    ask: { actor: string; actorKind: ActorKind; role: Role; label: string; expiresAt: Date | null; lookup: string; secretHash: Buffer },
+    ask: {
+      actor: string;
+      actorKind: ActorKind;
+      role: Role;
+      label: string;
+      expiresAt: Date | null;
+      lookup: string;
+      secretHash: Buffer;
+    },
   ): Promise<Written<TokenRecord> | { readonly outcome: 'NAME_TAKEN' }>;
-  revokeToken(by: Acting, id: string): Promise<Written<TokenRecord> | { readonly outcome: 'NOT_FOUND' | 'LAST_ADMIN' }>;
+  revokeToken(
+    by: Acting,
+    id: string,
+  ): Promise<Written<TokenRecord> | { readonly outcome: 'NOT_FOUND' | 'LAST_ADMIN' }>;
   /** At most one write a minute and token. */
   noteTokenUse(id: string): Promise<void>;
   /** First start: makes the SYSTEM actor and the first admin token; true only for the process that won. */
@@ -78,9 +89,17 @@ export interface Chips {
   /** Same content as the head: answers the head revision without a write. */
   reviseChip(
     by: Acting,
-    ask: { chipId: string; expectedRevision: number; model: ChipModelInput; note: string; canonicalOf: (number: number) => { canonical: string; hash: string } },
+    ask: {
+      chipId: string;
+      expectedRevision: number;
+      model: ChipModelInput;
+      note: string;
+      canonicalOf: (number: number) => { canonical: string; hash: string };
+    },
     idempotency?: Idempotency,
-  ): Promise<Written<ChipRevisionRecord> | KeyReused | { readonly outcome: 'STALE'; readonly headRevision: number }>;
+  ): Promise<
+    Written<ChipRevisionRecord> | KeyReused | { readonly outcome: 'STALE'; readonly headRevision: number }
+  >;
 }
 
 export interface SubmitAsk {
@@ -103,16 +122,32 @@ export interface Designs {
   /** The fast path: one prepared select. */
   findDesign(id: string): Promise<DesignRecord | null>;
   findRefusal(id: string): Promise<Problem | null>;
-  listDesigns(filter: DesignFilter, order: 'NEWEST' | 'REJECTION', page: PageAsk): Promise<Page<DesignRecord>>;
+  listDesigns(
+    filter: DesignFilter,
+    order: 'NEWEST' | 'REJECTION',
+    page: PageAsk,
+  ): Promise<Page<DesignRecord>>;
   /** With an idempotency key a row is always written, a hit included; without one a hit writes nothing. */
-  submitRequest(by: Acting, ask: SubmitAsk, limits: { openPerToken: number; queue: number }, idempotency?: Idempotency): Promise<Submitted>;
+  submitRequest(
+    by: Acting,
+    ask: SubmitAsk,
+    limits: { openPerToken: number; queue: number },
+    idempotency?: Idempotency,
+  ): Promise<Submitted>;
   findRequest(id: string): Promise<RequestRecord | null>;
   listRequests(
     filter: { chipId?: string; states?: readonly RequestState[]; createdBy?: string },
     page: PageAsk,
   ): Promise<Page<RequestRecord>>;
   /** Ends the ask; the computation ends with its last asker. A repeat by anybody allowed answers the same. */
-  cancelRequest(by: Acting, id: string): Promise<Written<RequestRecord> | { readonly outcome: 'NOT_FOUND' } | { readonly outcome: 'FINISHED'; readonly record: RequestRecord }>;
+  cancelRequest(
+    by: Acting,
+    id: string,
+  ): Promise<
+    | Written<RequestRecord>
+    | { readonly outcome: 'NOT_FOUND' }
+    | { readonly outcome: 'FINISHED'; readonly record: RequestRecord }
+  >;
 }
 
 export interface Computations {
@@ -139,10 +174,22 @@ export interface Configurations {
   listVersionsOfDesign(designId: string, page: PageAsk): Promise<Page<VersionRecord>>;
   saveVersion(
     by: Acting,
-    ask: { chipId: string; configuration: string; designId: string; designRevisionId: string; setting: Setting; contentHash: string; expectedVersion?: number; note: string },
+    ask: {
+      chipId: string;
+      configuration: string;
+      designId: string;
+      designRevisionId: string;
+      setting: Setting;
+      contentHash: string;
+      expectedVersion?: number;
+      note: string;
+    },
     idempotency?: Idempotency,
   ): Promise<
-    Written<VersionRecord> | KeyReused | { readonly outcome: 'STALE_CHIP_REVISION'; readonly headRevision: number } | { readonly outcome: 'VERSION_MOVED'; readonly lastVersion: number }
+    | Written<VersionRecord>
+    | KeyReused
+    | { readonly outcome: 'STALE_CHIP_REVISION'; readonly headRevision: number }
+    | { readonly outcome: 'VERSION_MOVED'; readonly lastVersion: number }
   >;
 }
 
@@ -156,10 +203,20 @@ export interface Releases {
   /** `expectedSequence` 0: only if there is none yet. */
   publishRelease(
     by: Acting,
-    ask: { chipId: string; name: string; versionId: string; expectedSequence?: number; note: string; accepted: readonly string[] },
+    ask: {
+      chipId: string;
+      name: string;
+      versionId: string;
+      expectedSequence?: number;
+      note: string;
+      accepted: readonly string[];
+    },
     idempotency?: Idempotency,
   ): Promise<
-    Written<ReleaseRecord> | KeyReused | { readonly outcome: 'STALE_CHIP_REVISION'; readonly headRevision: number } | { readonly outcome: 'SEQUENCE_MOVED'; readonly sequence: number }
+    | Written<ReleaseRecord>
+    | KeyReused
+    | { readonly outcome: 'STALE_CHIP_REVISION'; readonly headRevision: number }
+    | { readonly outcome: 'SEQUENCE_MOVED'; readonly sequence: number }
   >;
 }
 
@@ -174,7 +231,12 @@ export interface History {
 export type StoreEvent =
   | { readonly kind: 'COMPUTATION'; readonly id: string }
   | { readonly kind: 'CANCEL'; readonly id: string }
-  | { readonly kind: 'RELEASE'; readonly chipSerial: string; readonly name: string; readonly sequence: number }
+  | {
+      readonly kind: 'RELEASE';
+      readonly chipSerial: string;
+      readonly name: string;
+      readonly sequence: number;
+    }
   | { readonly kind: 'TOKEN'; readonly id: string }
   | { readonly kind: 'LOST' }
   | { readonly kind: 'RECONNECTED' };

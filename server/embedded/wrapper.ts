@@ -1,0 +1,69 @@
+/**
+ * Starts the server under a shell that holds a pipe to us. However this process ends, kill -9 included, the pipe's
+ * read end sees the end of file and the shell orders a fast, clean shutdown. The shell leads its own process group and
+ * ignores the terminal's signals, so that Ctrl-C reaches us first and running statements can end.
+ */
+import { spawn } from 'node:child_process';
+import type { Socket } from 'node:net';
+import type { Launch, Launched } from './types.ts';
+
+const SCRIPT =
+  '"$@" 3<&- & server=$!; trap "" INT TERM HUP; cat <&3 >/dev/null; kill -INT $server 2>/dev/null; wait $server';
+
+/** Crash recovery of a large write-ahead log may take this long. */
+const START_TIMEOUT_MS = 120_000;
+const LOG_KEPT = 4000;
+
+export function launchWrapped(launch: Launch): Promise<Launched> {
+  const settings = launch.settings.flatMap((setting) => ['-c', setting]);
+  const child = spawn(
+    '/bin/sh',
+    [
+      '-c',
+      SCRIPT,
+      'sh',
+      launch.binaries.postgres,
+      '-D',
+      launch.folder,
+      '-p',
+      String(launch.port),
+      ...settings,
+    ],
+    { ...launch.owner, cwd: launch.folder, detached: true, stdio: ['ignore', 'ignore', 'pipe', 'pipe'] },
+  );
+  const pipe = child.stdio[3] as Socket;
+  const words = child.stdio[2] as Socket;
+  // The reader may be gone already when we close.
+  pipe.on('error', () => {});
+  const ended = new Promise<void>((done) => {
+    child.once('close', () => done());
+  });
+  let log = '';
+  return new Promise((answer) => {
+    const refuse = (why: string) => {
+      clearTimeout(timer);
+      pipe.end();
+      answer({ started: false, log: log + why });
+    };
+    const timer = setTimeout(() => refuse('no answer in time'), START_TIMEOUT_MS);
+    child.once('error', (error) => refuse(String(error)));
+    child.once('close', () => refuse(''));
+    words.on('data', (chunk: Buffer) => {
+      log = (log + chunk).slice(-LOG_KEPT);
+      if (!log.includes('ready to accept connections')) return;
+      clearTimeout(timer);
+      // Neither the child nor its pipes keep this process alive once it has nothing else to do.
+      child.unref();
+      words.unref();
+      pipe.unref();
+      answer({
+        started: true,
+        stop: async () => {
+          child.ref();
+          pipe.end();
+          await ended;
+        },
+      });
+    });
+  });
+}
