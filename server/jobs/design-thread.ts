@@ -1,0 +1,29 @@
+/** Runs inside a worker thread: the question and the chip in, the design or the refusal out. */
+import { createHash } from 'node:crypto';
+import canonicalize from 'canonicalize';
+import { chipModelOf } from '../../schema/chip.ts';
+import { computeDesign, type DesignQuestion } from '../../src/design/index.ts';
+import { Refusal } from '../../src/errors.ts';
+import type { ThreadAnswer, ThreadTask } from './answer.ts';
+
+/** Loading this file is all that warming takes: the thread has then compiled the core. */
+export function warm(): void {}
+
+function resultHashOf(design: unknown): string {
+  const text = canonicalize(design);
+  if (text === undefined) throw new TypeError('a design must be JSON');
+  return createHash('sha256').update(text, 'utf8').digest('hex');
+}
+
+export function design({ canonical, model, port }: ThreadTask): ThreadAnswer {
+  const { specification, synthesis } = JSON.parse(canonical) as DesignQuestion;
+  try {
+    const result = computeDesign({ specification, synthesis }, chipModelOf(model), {
+      onProgress: (fraction) => port.postMessage(fraction),
+    });
+    return { outcome: 'DESIGN', design: result, resultHash: resultHashOf(result) };
+  } catch (error) {
+    if (error instanceof Refusal) return { outcome: 'REFUSED', details: error.details };
+    throw error;
+  }
+}

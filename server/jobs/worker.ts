@@ -1,0 +1,163 @@
+/**
+ * A worker: takes computations from the queue, computes them in threads, stores what comes out.
+ *
+ * The queue library fetches job by job (`localQueue` off): a local queue of 50 brings 12,000-15,000 jobs a second
+ * against 1,000-1,500, but a design takes milliseconds to minutes, so fetching never is the limit, and jobs that one
+ * process has locked ahead would wait for it while others are idle. From `add_job` to the start of the task: 3-5 ms.
+ */
+import { EventEmitter } from 'node:events';
+import { setTimeout as sleep } from 'node:timers/promises';
+import { type JobHelpers, makeWorkerUtils, type Runner, run, type WorkerEvents } from 'graphile-worker';
+import type { Logger } from 'pino';
+import { z } from 'zod';
+import { ENGINE_VERSION } from '../../src/conventions.ts';
+import type { Store } from '../store/index.ts';
+import { type ComputationDeps, computing } from './computation.ts';
+import { startLiveness } from './liveness.ts';
+import { queueLogger } from './queue-logger.ts';
+import { startThreads } from './threads.ts';
+
+/** Other engines' jobs are left alone, so old and new processes can run side by side. */
+const TASK = `design/${ENGINE_VERSION}`;
+
+/** New jobs are announced; freed ones (a dead worker's, a second try) are found at the next look. */
+const POLL_INTERVAL_MS = 1000;
+
+/** Between an end of the queue's runner that nobody asked for and the next one. */
+const RESTART_PAUSE_MS = 1000;
+
+const jobRule = z.object({ id: z.uuid() });
+
+export interface WorkerOptions {
+  readonly store: Store;
+  readonly logger: Logger;
+  readonly threads: number;
+  readonly computationTimeoutS: number;
+  /** Seconds that running computations get at `stop()`. */
+  readonly drainS: number;
+  readonly problems: Pick<ComputationDeps, 'problemOfRefusal' | 'problemOfTimeout'>;
+  readonly heartbeatFile?: string;
+  /** Another file with the exports of `design-thread.ts`. */
+  readonly threadFile?: URL;
+}
+
+export interface Worker {
+  /** Computations that run in this process now. */
+  readonly running: number;
+  /** Takes no more jobs, lets running ones finish for `drainS`, gives the rest back at once. */
+  stop(): Promise<void>;
+}
+
+interface Queue {
+  readonly runner: Runner;
+  readonly poolIds: readonly string[];
+}
+
+async function startQueue(
+  options: WorkerOptions,
+  task: (payload: unknown, job: JobHelpers) => Promise<void>,
+): Promise<Queue> {
+  const events = new EventEmitter() as WorkerEvents;
+  const poolIds: string[] = [];
+  events.on('pool:create', ({ workerPool }) => poolIds.push(workerPool.id));
+  const runner = await run({
+    // A pool of our own making: with a connection string a job aborted at shutdown would stay locked.
+    pgPool: options.store.pool,
+    noHandleSignals: true,
+    taskList: { [TASK]: task },
+    events,
+    preset: {
+      worker: {
+        concurrentJobs: options.threads,
+        pollInterval: POLL_INTERVAL_MS,
+        gracefulShutdownAbortTimeout: options.drainS * 1000,
+        logger: queueLogger(options.logger),
+      },
+    },
+  });
+  return { runner, poolIds };
+}
+
+/** Starts a worker on a migrated database; ready to compute when it returns. */
+export async function startWorker(options: WorkerOptions): Promise<Worker> {
+  const { store, logger } = options;
+  const threads = await startThreads(options.threads, options.threadFile);
+  const computations = computing({
+    store,
+    threads,
+    logger,
+    timeoutS: options.computationTimeoutS,
+    ...options.problems,
+  });
+  const unsubscribe = store.notifications.subscribe((event) => {
+    if (event.kind === 'CANCEL') computations.cancel(event.id);
+  });
+  /** Jobs that were aborted by the shutdown, with the attempts they had before. */
+  const givenBack = new Map<string, number>();
+  const task = async (payload: unknown, { job, abortSignal }: JobHelpers): Promise<void> => {
+    const { id } = jobRule.parse(payload);
+    const shutdown = abortSignal ?? new AbortController().signal;
+    try {
+      await computations.run(id, shutdown);
+    } catch (error) {
+      if (shutdown.aborted) givenBack.set(String(job.id), job.attempts - 1);
+      throw error;
+    }
+  };
+  const liveness = startLiveness({
+    store,
+    logger,
+    ...(options.heartbeatFile === undefined ? {} : { heartbeatFile: options.heartbeatFile }),
+  });
+  let stopping = false;
+  let queue = await startQueue(options, task);
+  await liveness.register(queue.poolIds);
+
+  /** The library ends its runner when it could not write a job's end; the process then starts another. */
+  const supervise = async (): Promise<void> => {
+    while (!stopping) {
+      await queue.runner.promise.catch((error: unknown) => logger.warn({ err: error }, 'the queue ended'));
+      while (!stopping) {
+        await sleep(RESTART_PAUSE_MS);
+        try {
+          queue = await startQueue(options, task);
+          if (stopping) await queue.runner.stop();
+          else await liveness.register(queue.poolIds);
+          break;
+        } catch (error) {
+          logger.warn({ err: error }, 'the queue does not start yet');
+        }
+      }
+    }
+  };
+  const supervising = supervise();
+
+  return {
+    get running() {
+      return computations.count;
+    },
+    async stop() {
+      stopping = true;
+      await queue.runner.stop().catch(() => {});
+      await supervising;
+      await giveBack(store, givenBack, logger);
+      unsubscribe();
+      await liveness.stop();
+      await threads.close();
+    },
+  };
+}
+
+/** An aborted run counts as a failed attempt and waits seconds for its next: neither is the computation's fault. */
+async function giveBack(store: Store, jobs: ReadonlyMap<string, number>, logger: Logger): Promise<void> {
+  if (jobs.size === 0) return;
+  const queue = await makeWorkerUtils({ pgPool: store.pool, logger: queueLogger(logger) });
+  try {
+    for (const [id, attempts] of jobs) await queue.rescheduleJobs([id], { runAt: new Date(), attempts });
+    logger.info({ jobs: jobs.size }, 'gave running computations back to the queue');
+  } catch (error) {
+    logger.warn({ err: error }, 'running computations wait for their next attempt');
+  } finally {
+    await queue.release();
+  }
+}
