@@ -1,8 +1,31 @@
 /** From what is asked to zeros and poles: families, bands, orders, sections, the split into all-pass arms. */
 
+export { type AllPassPair, decompose } from './allpass.ts';
 export { type BandAsk, designHighPass, designLowPass, rotateFilter } from './bands.ts';
 export { evaluateInto, groupDelayInto, transmissionAt } from './evaluate.ts';
 export { type AnalogFilter, type AnalogPrototype, analogPrototype, type PrototypeAsk } from './families.ts';
+export { MAX_ORDER } from './guards.ts';
+export {
+  designHalfBand,
+  type HalfBandAsk,
+  type HalfBandFamily,
+  halfBandIsolationDb,
+  halfBandStopEdgeRad,
+  leastHalfBandOrder,
+} from './half-band.ts';
 export { designMirroredBandPass, designMirroredBandStop, type MirroredBandAsk } from './mirrored-bands.ts';
+export {
+  butterworthEdgeRad,
+  type DesignEdges,
+  designEdges,
+  type LeastOrder,
+  type LowPassDemand,
+  leastOrder,
+  naturalStopEdgeRad,
+  reachablePassEdgeRad,
+  reachableRejectionDb,
+  reachableRippleDb,
+  reachableStopEdgeRad,
+} from './order.ts';
 export type * from './specification.ts';
 export type * from './transfer-function.ts';

@@ -8,5 +8,9 @@ const NEPER_PER_DB = Math.LN10 / 10;
 export const rippleFactor = (attenuationDb: number): number =>
   Math.sqrt(Math.expm1(attenuationDb * NEPER_PER_DB));
 
+/** A factor whose square overflows is its own attenuation long before. */
+const GREAT_FACTOR = 1e100;
+
 /** The attenuation 10·log₁₀(1 + ε²) in dB that a factor stands for. */
-export const attenuationDb = (factor: number): number => Math.log1p(factor * factor) / NEPER_PER_DB;
+export const attenuationDb = (factor: number): number =>
+  (factor < GREAT_FACTOR ? Math.log1p(factor * factor) : 2 * Math.log(factor)) / NEPER_PER_DB;
