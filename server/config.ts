@@ -98,15 +98,9 @@ const VARIABLES = {
     'Connections to PostgreSQL that one process keeps.',
     '20',
   ),
-  RINGBINDER_QUEUE_LIMIT: variable(
-    wholeNumber(1, 1_000_000),
-    'Computations that may wait at once; beyond it new requests get QUEUE_FULL.',
-    '10000',
-  ),
-  RINGBINDER_RATE_PER_S: variable(
-    wholeNumber(1, 1_000_000),
-    'Requests a second that one token may make of one process; bursts up to twice as many.',
-    '50',
+  RINGBINDER_HEARTBEAT: variable(
+    z.string().min(1, 'the path of a file'),
+    'File that a worker touches every second while it reaches the queue; for health checks.',
   ),
   RINGBINDER_TRUST_PROXY: variable(
     trustProxy,
@@ -128,8 +122,7 @@ export interface Config {
   readonly computationTimeoutS: number;
   readonly drainS: number;
   readonly poolSize: number;
-  readonly queueLimit: number;
-  readonly ratePerS: number;
+  readonly heartbeatFile?: string;
   readonly trustProxy: boolean | readonly string[];
 }
 
@@ -180,6 +173,7 @@ export function readConfig(environment: Readonly<Record<string, string | undefin
   };
   const databaseUrl = read('DATABASE_URL');
   const adminToken = read('RINGBINDER_ADMIN_TOKEN');
+  const heartbeatFile = read('RINGBINDER_HEARTBEAT');
   // Every other variable has a default: `undefined` only where it is wrong, and then nothing is returned.
   const config = {
     ...(databaseUrl === undefined ? {} : { databaseUrl }),
@@ -192,8 +186,7 @@ export function readConfig(environment: Readonly<Record<string, string | undefin
     computationTimeoutS: read('RINGBINDER_COMPUTATION_TIMEOUT_S') as number,
     drainS: read('RINGBINDER_DRAIN_S') as number,
     poolSize: read('RINGBINDER_POOL_SIZE') as number,
-    queueLimit: read('RINGBINDER_QUEUE_LIMIT') as number,
-    ratePerS: read('RINGBINDER_RATE_PER_S') as number,
+    ...(heartbeatFile === undefined ? {} : { heartbeatFile }),
     trustProxy: read('RINGBINDER_TRUST_PROXY') as boolean | readonly string[],
   };
   if (wrong.length > 0) throw new ConfigurationError(`Configuration: ${wrong.join('; ')}.`);

@@ -17,8 +17,7 @@
  * completes it for anybody, so a superseded run must throw.
  */
 import type { Logger } from 'pino';
-import type { Problem } from '../../schema/problem.ts';
-import type { RefusalDetails } from '../../src/errors.ts';
+import { problemOf, problemOfRefusal } from '../errors.ts';
 import type { Computations } from '../store/index.ts';
 import type { ThreadAnswer } from './answer.ts';
 import { persist } from './persist.ts';
@@ -36,9 +35,6 @@ export interface ComputationDeps {
   readonly threads: Threads;
   readonly logger: Logger;
   readonly timeoutS: number;
-  /** A refusal as it is stored, in terms of the canonical request. */
-  readonly problemOfRefusal: (details: RefusalDetails, canonical: string) => Problem;
-  readonly problemOfTimeout: (timeoutS: number) => Problem;
 }
 
 /** Another run of the same computation counts; this one's result does not. */
@@ -142,7 +138,10 @@ async function compute(
     if (why === 'SUPERSEDED') return superseded();
     if (why === 'TIMED_OUT') {
       log.warn({ timeoutS }, 'computation timed out');
-      const problem = deps.problemOfTimeout(timeoutS);
+      const problem = problemOf(
+        'COMPUTATION_TIMED_OUT',
+        `The computation took longer than ${timeoutS} s and was ended.`,
+      );
       if (await persist(() => store.refuseComputation(id, attempt, problem), shutdown, log)) return;
       return superseded();
     }
@@ -155,7 +154,7 @@ async function compute(
     () =>
       answer.outcome === 'DESIGN'
         ? store.finishComputation(id, attempt, answer.design, answer.resultHash)
-        : store.refuseComputation(id, attempt, deps.problemOfRefusal(answer.details, canonical)),
+        : store.refuseComputation(id, attempt, problemOfRefusal(answer.details)),
     shutdown,
     log,
   );

@@ -12,7 +12,7 @@ import type { Logger } from 'pino';
 import { z } from 'zod';
 import { ENGINE_VERSION } from '../../src/conventions.ts';
 import type { Store } from '../store/index.ts';
-import { type ComputationDeps, computing } from './computation.ts';
+import { computing } from './computation.ts';
 import { startLiveness } from './liveness.ts';
 import { queueLogger } from './queue-logger.ts';
 import { startThreads } from './threads.ts';
@@ -35,7 +35,6 @@ export interface WorkerOptions {
   readonly computationTimeoutS: number;
   /** Seconds that running computations get at `stop()`. */
   readonly drainS: number;
-  readonly problems: Pick<ComputationDeps, 'problemOfRefusal' | 'problemOfTimeout'>;
   readonly heartbeatFile?: string;
   /** Another file with the exports of `design-thread.ts`. */
   readonly threadFile?: URL;
@@ -87,7 +86,6 @@ export async function startWorker(options: WorkerOptions): Promise<Worker> {
     threads,
     logger,
     timeoutS: options.computationTimeoutS,
-    ...options.problems,
   });
   const unsubscribe = store.notifications.subscribe((event) => {
     if (event.kind === 'CANCEL') computations.cancel(event.id);
