@@ -165,7 +165,10 @@ create index history_subject on history (subject_kind, subject_id, id desc);
 create index history_chip on history (chip_id, id desc) where chip_id is not null;
 create index history_actor on history (actor_id, id desc);
 
+-- key is also the key of a session-level advisory lock: whoever can take that lock knows that the process is dead.
 create table worker_process (key bigint primary key, pool_ids text[] not null, engine text not null, started_at timestamptz(3) not null default now());
+-- When a live worker of an engine was last seen: a queue longer than a restart must not look like a retired engine.
+create table engine_service (engine text primary key, last_served_at timestamptz(3) not null);
 
 -- ALWAYS: a session in the replica role skips ordinary triggers.
 do $$ declare t text; begin
