@@ -27,5 +27,8 @@ export {
   reachableRippleDb,
   reachableStopEdgeRad,
 } from './order.ts';
+export { allPairings, mirroredPairings, type Pairing, pairPoles, type SectionRoots } from './pairing.ts';
+export { findPeak, type Peak } from './peak.ts';
+export { cascadeCostDb, passiveSection, toSections } from './sections.ts';
 export type * from './specification.ts';
 export type * from './transfer-function.ts';
