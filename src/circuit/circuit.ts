@@ -46,8 +46,19 @@ export interface CircuitParameters {
 
 /** The flat signal-flow netlist that is exported and accepted; delays in unit delays, losses in dB (power). */
 export type NetlistElement =
-  | { readonly id: string; readonly kind: 'coupler'; readonly powerCrossCoupling: number; readonly excessLossDb: number }
-  | { readonly id: string; readonly kind: 'waveguide'; readonly delay: number; readonly phase: number; readonly lossDb: number };
+  | {
+      readonly id: string;
+      readonly kind: 'coupler';
+      readonly powerCrossCoupling: number;
+      readonly excessLossDb: number;
+    }
+  | {
+      readonly id: string;
+      readonly kind: 'waveguide';
+      readonly delay: number;
+      readonly phase: number;
+      readonly lossDb: number;
+    };
 
 export interface Netlist {
   readonly elements: readonly NetlistElement[];

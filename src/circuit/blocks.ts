@@ -1,0 +1,223 @@
+/**
+ * The inner loops of the kernel over one block of frequencies, on one heap of numbers; all arguments are positions in
+ * that heap. This is the plain version: the reference for src/circuit/wasm/blocks.ts and its stand-in where WebAssembly
+ * SIMD is missing.
+ */
+
+/** Frequencies a block: tables and fields of one block stay in the first-level cache. */
+export const BLOCK = 256;
+
+/** Heap of 4 WebAssembly pages. */
+export const HEAP_SIZE = 32_768;
+
+export interface BlockRoutines {
+  readonly heap: Float64Array;
+  /** cos, sin ← of half·Ω, n values. */
+  halfAngles(n: number, omega: number, half: number, cos: number, sin: number): void;
+  /** arm ← amplitude·e^(−jφ), given as cosine and sine parts. */
+  fillArm(n: number, re: number, im: number, valueRe: number, valueIm: number): void;
+  /** arm ← value·e^(−jδΩ) from the half-angle tables of δ. */
+  delayArm(
+    n: number,
+    cos: number,
+    sin: number,
+    re: number,
+    im: number,
+    valueRe: number,
+    valueIm: number,
+  ): void;
+  /** arm ← arm·Π rings, `stride` numbers a ring (src/circuit/elements.ts); lossless rings only. */
+  allPassRings(
+    n: number,
+    cos: number,
+    sin: number,
+    rings: number,
+    count: number,
+    re: number,
+    im: number,
+  ): void;
+  /** The same for rings with loss. */
+  lossyRings(n: number, cos: number, sin: number, rings: number, count: number, re: number, im: number): void;
+  /**
+   * Outputs of a cell from its arms (`arms`: re0, im0, re1, im1, a block apart) and the field at in1 (`from`: re, im, a
+   * block apart; negative: 1). `k`: barBar, crossCross, barCross, crossBar. `to`: out1 re, im, out2 re, im.
+   */
+  combine(n: number, arms: number, k: number, from: number, to: number): void;
+  /** Adds what in2 (`from`) contributes. */
+  combineSecond(n: number, arms: number, k: number, from: number, to: number): void;
+}
+
+/** Numbers a ring occupies in the heap: the first six of its constants. */
+export const HEAP_RING = 6;
+
+export function createPlainBlocks(): BlockRoutines {
+  const heap = new Float64Array(HEAP_SIZE);
+  return {
+    heap,
+    halfAngles(n, omega, half, cos, sin) {
+      for (let i = 0; i < n; i++) {
+        const angle = half * heap[omega + i]!;
+        heap[cos + i] = Math.cos(angle);
+        heap[sin + i] = Math.sin(angle);
+      }
+    },
+    fillArm(n, re, im, valueRe, valueIm) {
+      heap.fill(valueRe, re, re + n);
+      heap.fill(valueIm, im, im + n);
+    },
+    delayArm(n, cos, sin, re, im, valueRe, valueIm) {
+      for (let i = 0; i < n; i++) {
+        const c = heap[cos + i]!;
+        const s = heap[sin + i]!;
+        const eRe = c * c - s * s;
+        const eIm = -2 * c * s;
+        heap[re + i] = valueRe * eRe - valueIm * eIm;
+        heap[im + i] = valueRe * eIm + valueIm * eRe;
+      }
+    },
+    allPassRings: (n, cos, sin, rings, count, re, im) =>
+      plainAllPass(heap, n, cos, sin, rings, count, re, im),
+    lossyRings: (n, cos, sin, rings, count, re, im) => plainLossy(heap, n, cos, sin, rings, count, re, im),
+    combine: (n, arms, k, from, to) => plainCombine(heap, n, arms, k, from, to),
+    combineSecond: (n, arms, k, from, to) => plainCombineSecond(heap, n, arms, k, from, to),
+  };
+}
+
+/** A lossless ring is −conj(B)/B: one product of all B, one division at the end. */
+function plainAllPass(
+  heap: Float64Array,
+  n: number,
+  cos: number,
+  sin: number,
+  rings: number,
+  count: number,
+  re: number,
+  im: number,
+): void {
+  const sign = count % 2 === 0 ? 1 : -1;
+  const end = rings + count * HEAP_RING;
+  for (let i = 0; i < n; i++) {
+    const c = heap[cos + i]!;
+    const s = heap[sin + i]!;
+    let pRe = 1;
+    let pIm = 0;
+    for (let r = rings; r < end; r += HEAP_RING) {
+      const ch = heap[r + 4]!;
+      const sh = heap[r + 5]!;
+      const bRe = heap[r + 2]! * (c * ch - s * sh);
+      const bIm = heap[r + 3]! * (s * ch + c * sh);
+      const next = pRe * bRe - pIm * bIm;
+      pIm = pRe * bIm + pIm * bRe;
+      pRe = next;
+    }
+    const rr = pRe * pRe;
+    const ii = pIm * pIm;
+    const norm = sign / (rr + ii);
+    const qRe = (rr - ii) * norm;
+    const qIm = -2 * pRe * pIm * norm;
+    const aRe = heap[re + i]!;
+    const aIm = heap[im + i]!;
+    heap[re + i] = aRe * qRe - aIm * qIm;
+    heap[im + i] = aRe * qIm + aIm * qRe;
+  }
+}
+
+function plainLossy(
+  heap: Float64Array,
+  n: number,
+  cos: number,
+  sin: number,
+  rings: number,
+  count: number,
+  re: number,
+  im: number,
+): void {
+  const end = rings + count * HEAP_RING;
+  for (let i = 0; i < n; i++) {
+    const c = heap[cos + i]!;
+    const s = heap[sin + i]!;
+    let pRe = 1;
+    let pIm = 0;
+    let aRe = heap[re + i]!;
+    let aIm = heap[im + i]!;
+    for (let r = rings; r < end; r += HEAP_RING) {
+      const ch = heap[r + 4]!;
+      const sh = heap[r + 5]!;
+      const cd = c * ch - s * sh;
+      const sd = s * ch + c * sh;
+      const bRe = heap[r + 2]! * cd;
+      const bIm = heap[r + 3]! * sd;
+      const nRe = heap[r]! * cd;
+      const nIm = heap[r + 1]! * sd;
+      const p = pRe * bRe - pIm * bIm;
+      pIm = pRe * bIm + pIm * bRe;
+      pRe = p;
+      const a = aRe * nRe - aIm * nIm;
+      aIm = aRe * nIm + aIm * nRe;
+      aRe = a;
+    }
+    const norm = 1 / (pRe * pRe + pIm * pIm);
+    heap[re + i] = (aRe * pRe + aIm * pIm) * norm;
+    heap[im + i] = (aIm * pRe - aRe * pIm) * norm;
+  }
+}
+
+function plainCombine(
+  heap: Float64Array,
+  n: number,
+  arms: number,
+  k: number,
+  from: number,
+  to: number,
+): void {
+  const barBar = heap[k]!;
+  const crossCross = heap[k + 1]!;
+  const barCross = heap[k + 2]!;
+  const crossBar = heap[k + 3]!;
+  for (let i = 0; i < n; i++) {
+    const a0Re = heap[arms + i]!;
+    const a0Im = heap[arms + BLOCK + i]!;
+    const a1Re = heap[arms + 2 * BLOCK + i]!;
+    const a1Im = heap[arms + 3 * BLOCK + i]!;
+    const bRe = barBar * a0Re - crossCross * a1Re;
+    const bIm = barBar * a0Im - crossCross * a1Im;
+    const cRe = barCross * a0Im + crossBar * a1Im;
+    const cIm = -(barCross * a0Re + crossBar * a1Re);
+    const fRe = from < 0 ? 1 : heap[from + i]!;
+    const fIm = from < 0 ? 0 : heap[from + BLOCK + i]!;
+    heap[to + i] = bRe * fRe - bIm * fIm;
+    heap[to + BLOCK + i] = bRe * fIm + bIm * fRe;
+    heap[to + 2 * BLOCK + i] = cRe * fRe - cIm * fIm;
+    heap[to + 3 * BLOCK + i] = cRe * fIm + cIm * fRe;
+  }
+}
+
+function plainCombineSecond(
+  heap: Float64Array,
+  n: number,
+  arms: number,
+  k: number,
+  from: number,
+  to: number,
+): void {
+  const barBar = heap[k]!;
+  const crossCross = heap[k + 1]!;
+  const barCross = heap[k + 2]!;
+  const crossBar = heap[k + 3]!;
+  for (let i = 0; i < n; i++) {
+    const a0Re = heap[arms + i]!;
+    const a0Im = heap[arms + BLOCK + i]!;
+    const a1Re = heap[arms + 2 * BLOCK + i]!;
+    const a1Im = heap[arms + 3 * BLOCK + i]!;
+    const cRe = crossBar * a0Im + barCross * a1Im;
+    const cIm = -(crossBar * a0Re + barCross * a1Re);
+    const bRe = barBar * a1Re - crossCross * a0Re;
+    const bIm = barBar * a1Im - crossCross * a0Im;
+    const fRe = heap[from + i]!;
+    const fIm = heap[from + BLOCK + i]!;
+    heap[to + i]! += cRe * fRe - cIm * fIm;
+    heap[to + BLOCK + i]! += cRe * fIm + cIm * fRe;
+    heap[to + 2 * BLOCK + i]! += bRe * fRe - bIm * fIm;
+    heap[to + 3 * BLOCK + i]! += bRe * fIm + bIm * fRe;
+  }
+}
