@@ -5,6 +5,7 @@
  */
 import { Complex } from 'complex.js';
 import type { AnalogFilter } from './families.ts';
+import { guardPoles } from './guards.ts';
 import type { LabelledFilter } from './transfer-function.ts';
 
 /** tan(Ω/2). */
@@ -25,7 +26,8 @@ function toUnitCircle(w: number): Complex {
 
 /**
  * Digital filter of an analog one. Each factor (s − r) becomes (1 − r)(z − z_r)/(z + 1), so the gain is a product of
- * terms without cancellation (poles lie left of 0) and every zero at infinity lands on z = −1.
+ * terms without cancellation (poles lie left of 0) and every zero at infinity lands on z = −1. Refuses poles that a
+ * double cannot tell from the unit circle.
  */
 export function bilinear(filter: AnalogFilter): LabelledFilter {
   let gain = new Complex(filter.gain, 0);
@@ -33,5 +35,7 @@ export function bilinear(filter: AnalogFilter): LabelledFilter {
   for (const pole of filter.poles) gain = gain.div(pole.neg().add(1));
   const zeros = filter.zeros.map((zero) => (zero.re === 0 ? toUnitCircle(zero.im) : toZ(zero)));
   while (zeros.length < filter.poles.length) zeros.push(new Complex(-1, 0));
-  return { zeros, poles: filter.poles.map(toZ), gain: new Complex(gain.re, 0), arms: filter.arms };
+  const poles = filter.poles.map(toZ);
+  guardPoles(poles);
+  return { zeros, poles, gain: new Complex(gain.re, 0), arms: filter.arms };
 }

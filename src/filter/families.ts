@@ -57,10 +57,10 @@ function prototype(zeros: Complex[], poles: Complex[], dcGain: number): AnalogPr
   };
 }
 
-/** θ of pole `index` (from 0): π(2·index + 1)/(2·order), with the middle one exact. */
+/** sin and cos of θ = π(2·index + 1)/(2·order), `index` from 0; the middle one, cos θ = 0, exact. */
 function angleFromAxis(index: number, order: number): { sin: number; cos: number } {
-  const quarterTurns = (2 * index + 1 - order) / order;
-  return { sin: Math.cos((quarterTurns * Math.PI) / 2), cos: -Math.sin((quarterTurns * Math.PI) / 2) };
+  const beforeMiddle = (((order - 1 - 2 * index) / order) * Math.PI) / 2;
+  return { sin: Math.cos(beforeMiddle), cos: Math.sin(beforeMiddle) };
 }
 
 function isMiddle(index: number, order: number): boolean {

@@ -1,4 +1,5 @@
 /** What no filter design can be asked for; everything past these guards may assume sound numbers. */
+import type { Complex } from 'complex.js';
 import { type LimitKind, Refusal } from '../errors.ts';
 import type { PrototypeAsk } from './families.ts';
 
@@ -50,6 +51,23 @@ export function guardRejection(rejectionDb: number | undefined): asserts rejecti
 export function guardContrast(rippleDb: number, rejectionDb: number): void {
   if (rejectionDb > rippleDb) return;
   refuse('The rejection must be greater than the ripple.', rejectionDb, { above: rippleDb });
+}
+
+/** Nearer than this to the unit circle a pole's rounding alone moves the response by more than 1e-6. */
+const LEAST_POLE_DISTANCE = 1e-10;
+
+/** Refuses designs whose transition is so steep that their poles are lost in rounding. */
+export function guardPoles(poles: readonly Complex[]): void {
+  const nearest = Math.max(...poles.map((pole) => pole.abs()));
+  if (1 - nearest >= LEAST_POLE_DISTANCE) return;
+  throw new Refusal({
+    code: 'SPECIFICATION_UNREACHABLE',
+    detail:
+      'The transition is so steep, or the band so narrow, that a ring would have to keep its light almost for ever.',
+    given: { polePowerLoss: (1 - nearest) * (1 + nearest) },
+    allowed: { min: 2 * LEAST_POLE_DISTANCE },
+    limit: 'COUPLING_RANGE',
+  });
 }
 
 /** Guards order and the figures that the family uses. */
