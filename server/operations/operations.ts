@@ -10,7 +10,7 @@ import type { ChipModel } from '../../src/chip/model.ts';
 import type { Netlist } from '../../src/circuit/circuit.ts';
 import type { FilterSpecification, OutputPort } from '../../src/filter/specification.ts';
 import type { Figures, Stage } from '../../src/response/response.ts';
-import type { Viewer } from '../auth/viewer.ts';
+import type { Viewer } from '../auth/index.ts';
 import type {
   ActorRecord,
   ChipRecord,

@@ -1,0 +1,2 @@
+/** What the service does, for both doors. */
+export type * from './operations.ts';
