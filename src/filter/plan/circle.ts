@@ -50,3 +50,11 @@ export function distanceRad(pointRad: number, arc: Arc): number {
   if (ahead <= arc.lengthRad) return 0;
   return Math.min(TURN - ahead, ahead - arc.lengthRad);
 }
+
+/** A single line gets this share of the room around it as its half-width: it then lies inside a band, not on an edge. */
+export const LINE_SHARE = 1e-3;
+
+/** A stopband edge kept off the point half an FSR away, where a design edge would be infinite in the s-plane. */
+export function insideHalfTurn(stopEdgeRad: number, passEdgeRad: number): number {
+  return Math.min(stopEdgeRad, Math.PI - LINE_SHARE * (Math.PI - passEdgeRad));
+}

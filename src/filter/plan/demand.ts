@@ -4,7 +4,7 @@
  */
 import { Refusal } from '../../errors.ts';
 import type { Band, MaskSpecification, OutputPort } from '../specification.ts';
-import { type Arc, arcOf, foldRad } from './circle.ts';
+import { type Arc, arcOf, foldRad, insideHalfTurn, LINE_SHARE } from './circle.ts';
 import { refuseCollisions } from './collisions.ts';
 import type { OneBandDemand, StopDemand } from './plan.ts';
 
@@ -114,17 +114,9 @@ function lowPassOf(own: readonly OwnBand[]): OneBandDemand {
     centreRad: centreRad - TURN * Math.round(centreRad / TURN),
     passEdgeRad: Math.max(raw, LINE_SHARE * nearest),
     rippleDb: Math.min(...own.filter((band) => band.kind === 'PASS').map((band) => band.levelDb)),
-    stops: mergeStops(
-      stops.map((stop) => ({
-        ...stop,
-        edgeRad: Math.min(stop.edgeRad, Math.PI - LINE_SHARE * (Math.PI - raw)),
-      })),
-    ),
+    stops: mergeStops(stops.map((stop) => ({ ...stop, edgeRad: insideHalfTurn(stop.edgeRad, raw) }))),
   };
 }
-
-/** A single line gets this share of the room around it as its half-width: it then lies inside a band, not on an edge. */
-const LINE_SHARE = 0.02;
 
 function edgeOf(arc: Arc, centreRad: number): number {
   const ahead = foldRad(arc.startRad - centreRad);

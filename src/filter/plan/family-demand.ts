@@ -1,7 +1,7 @@
 /** The family form of a specification: which parameters a family and shape take, and the low-pass they describe. */
 import { Refusal } from '../../errors.ts';
 import type { Family, FamilySpecification } from '../specification.ts';
-import { arcOf, distanceRad } from './circle.ts';
+import { arcOf, distanceRad, insideHalfTurn } from './circle.ts';
 
 const TURN = 2 * Math.PI;
 
@@ -210,11 +210,11 @@ export function geometryOf(spec: FamilySpecification, fsrGhz: number): FamilyGeo
   const inverted = stopsBand(spec);
   const centreRad = (TURN * spec.centreGhz) / fsrGhz + (inverted ? Math.PI : 0);
   const half = (Math.PI * width) / fsrGhz;
-  return {
-    centreRad,
-    bandEdgeRad: inverted ? Math.PI - half : half,
-    stopEdgeRad: spec.stopband ? distanceRad(centreRad, arcOf(spec.stopband, fsrGhz)) : null,
-  };
+  const bandEdgeRad = inverted ? Math.PI - half : half;
+  const stopEdgeRad = spec.stopband
+    ? insideHalfTurn(distanceRad(centreRad, arcOf(spec.stopband, fsrGhz)), bandEdgeRad)
+    : null;
+  return { centreRad, bandEdgeRad, stopEdgeRad };
 }
 
 function centred(centreGhz: number, halfGhz: number): { lowGhz: number; highGhz: number } {

@@ -2,7 +2,7 @@
 import { type Change, Refusal, type Suggestion } from '../../errors.ts';
 import { reachableRejectionDb, reachableStopEdgeRad } from '../order.ts';
 import type { Family, MaskSpecification } from '../specification.ts';
-import { foldRad } from './circle.ts';
+import { foldRad, insideHalfTurn } from './circle.ts';
 import type { MaskDemand, OwnBand } from './demand.ts';
 import { type Capacity, FAMILIES, type FamilyPlans } from './plan.ts';
 import { describeCapacity, describeOrder, typedRejectionDb } from './refuse-order.ts';
@@ -63,7 +63,10 @@ function suggestions(
   const { passEdgeRad, rippleDb, stops } = understood.demand;
   const strictestDb = Math.max(...stops.map((stop) => stop.rejectionDb));
   const edgeRad = reachableStopEdgeRad(family, most, { passEdgeRad, rippleDb, rejectionDb: strictestDb });
-  const wider = widerTransition(mask, understood, edgeRad, fsrGhz);
+  const wider =
+    edgeRad + EDGE_STEP_FSR * TURN > insideHalfTurn(Math.PI, passEdgeRad)
+      ? null
+      : widerTransition(mask, understood, edgeRad, fsrGhz);
   if (wider) list.push({ reason: 'the same rejection, a wider transition', changes: [...wider, ...order] });
   return list;
 }

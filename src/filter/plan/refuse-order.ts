@@ -3,7 +3,7 @@ import { HALF_POWER_DB } from '../../conventions.ts';
 import { type Change, Refusal, type Suggestion } from '../../errors.ts';
 import { reachableRejectionDb, reachableStopEdgeRad } from '../order.ts';
 import type { FamilySpecification, IntervalGhz } from '../specification.ts';
-import { foldGhz } from './circle.ts';
+import { foldGhz, insideHalfTurn } from './circle.ts';
 import type { FamilyGeometry } from './family-demand.ts';
 import { type Capacity, MAX_DESIGN_ORDER } from './plan.ts';
 
@@ -107,7 +107,8 @@ function easier(
     rejectionDb: spec.rejectionDb!,
   });
   const works = stopIntervalGhz(geometry.centreRad, stopEdgeRad, spec.stopband!, fsrGhz);
-  if (works)
+  const hasWidth = stopEdgeRad + EDGE_STEP_FSR * TURN < insideHalfTurn(Math.PI, geometry.bandEdgeRad);
+  if (works && hasWidth)
     suggestions.push({
       reason: 'the same rejection, a wider transition',
       changes: [{ pointer: `${AT}/stopband`, given: spec.stopband, works, unit: 'GHz' }, ...order],
@@ -124,7 +125,7 @@ function stopIntervalGhz(
 ): IntervalGhz | null {
   const step = EDGE_STEP_FSR * fsrGhz;
   const halfGhz = Math.floor((((Math.PI - stopEdgeRad) * fsrGhz) / TURN - 1e-9 * fsrGhz) / step) * step;
-  if (!(halfGhz > 0)) return null;
+  if (!(halfGhz > step)) return null;
   const middle = ((centreRad + Math.PI) * fsrGhz) / TURN;
   const askedMiddle = (asked.lowGhz + asked.highGhz) / 2;
   const near = askedMiddle + foldGhz(middle - askedMiddle, fsrGhz);
