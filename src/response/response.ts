@@ -1,5 +1,5 @@
 /** Curves, figures and compliance as the rest of the project sees them. */
-import type { Band, OutputPort } from '../filter/specification.ts';
+import type { Band } from '../filter/specification.ts';
 
 /** TARGET: transfer function. CIRCUIT: lossless circuit. CHIP: with loss. SETTING: as set, crosstalk and rounding in. */
 export type Stage = 'TARGET' | 'CIRCUIT' | 'CHIP' | 'SETTING';
@@ -11,6 +11,8 @@ export interface Spectrum {
   readonly im: Float64Array;
   /** −dφ/dω, ps. NaN where undefined (more than 60 dB below the peak). */
   readonly groupDelayPs: Float64Array;
+  /** dτ/dν, ps/GHz. NaN where the delay is. */
+  readonly groupDelaySlopePsPerGhz: Float64Array;
 }
 
 export interface Figures {
