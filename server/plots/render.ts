@@ -24,11 +24,20 @@ function shortened(svg: string): string {
   );
 }
 
+/** The library counts its clip paths through the life of the process; here each picture starts at 1. */
+function renumbered(svg: string): string {
+  const numbers = new Map<string, number>();
+  return svg.replace(/(id="clip|url\(#clip)(\d+)/g, (_, before: string, id: string) => {
+    if (!numbers.has(id)) numbers.set(id, numbers.size + 1);
+    return `${before}${numbers.get(id)}`;
+  });
+}
+
 /** @returns a complete, self-contained SVG document with title and description. */
 export async function renderSvg(spec: TopLevelSpec, { title, description }: PlotText): Promise<string> {
   const view = new View(parse(compile(spec).spec), { renderer: 'none', logLevel: Warn });
   try {
-    const svg = shortened(await view.toSVG());
+    const svg = renumbered(shortened(await view.toSVG()));
     const end = svg.indexOf('>') + 1;
     const opening = svg.slice(0, end - 1);
     return `<?xml version="1.0" encoding="UTF-8"?>\n${opening} role="img" aria-labelledby="plot-title plot-description"><title id="plot-title">${escapeXml(title)}</title><desc id="plot-description">${escapeXml(description)}</desc>${svg.slice(end)}`;
