@@ -2,6 +2,7 @@
 
 export { type AllPassPair, decompose } from './allpass.ts';
 export { type BandAsk, designHighPass, designLowPass, rotateFilter } from './bands.ts';
+export { complementOf, complementOfHalfBand } from './complement.ts';
 export { evaluateInto, groupDelayInto, transmissionAt } from './evaluate.ts';
 export { type AnalogFilter, type AnalogPrototype, analogPrototype, type PrototypeAsk } from './families.ts';
 export { MAX_ORDER } from './guards.ts';

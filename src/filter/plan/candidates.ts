@@ -3,12 +3,13 @@
  * allowance to spend as ripple, how much to keep) is offered as a short list of variants: which one a chip with loss
  * does best with is decided there, where the loss is known.
  */
-import { designLowPass, rotateFilter } from '../bands.ts';
+import { type BandAsk, designLowPass, rotateFilter } from '../bands.ts';
+import { complementOf, complementOfHalfBand } from '../complement.ts';
 import { transmissionAt } from '../evaluate.ts';
 import { designHalfBand, halfBandIsolationDb } from '../half-band.ts';
 import { designEdges, reachablePassEdgeRad, reachableRejectionDb } from '../order.ts';
 import type { Family } from '../specification.ts';
-import type { LabelledFilter } from '../transfer-function.ts';
+import type { LabelledFilter, TransferFunction } from '../transfer-function.ts';
 import { MAX_DESIGN_ORDER, type OneBandDemand } from './plan.ts';
 
 export interface Candidate {
@@ -20,6 +21,7 @@ export interface Candidate {
   readonly stopEdgeRad: number;
   /** Rotated to the demand's centre. */
   readonly filter: LabelledFilter;
+  readonly complement: () => TransferFunction;
 }
 
 /** Shares of the ripple allowance that are tried; the rest stays as margin for what the chip adds. */
@@ -97,7 +99,7 @@ function design(
   const rejectionDb = Math.min(reach, GREATEST_REJECTION_DB);
   const beyond = demand.stops.filter((stop) => stop.edgeRad >= stopEdgeRad);
   if (beyond.length === 0 || rejectionDb <= rippleDb) return null;
-  const prototype = designLowPass({
+  const ask: BandAsk = {
     family,
     order,
     // Ripple is spent as planned at the pass edge; what the order has to spare becomes rejection.
@@ -107,22 +109,17 @@ function design(
         : designEdges(family, order, { passEdgeRad, stopEdgeRad, rippleDb, rejectionDb }).lowRad,
     rippleDb,
     rejectionDb,
-  });
+  };
+  const prototype = designLowPass(ask);
   const meets = demand.stops.every(
     (stop) =>
       rejectionAt(prototype, family, stop.edgeRad, stopEdgeRad, rejectionDb) >=
       stop.rejectionDb - ROUNDING_DB,
   );
   if (!meets) return null;
-  return {
-    family,
-    order,
-    rippleDb,
-    rejectionDb,
-    passEdgeRad,
-    stopEdgeRad,
-    filter: rotateFilter(prototype, centreRad),
-  };
+  const filter = rotateFilter(prototype, centreRad);
+  const complement = () => complementOf(ask, filter, centreRad);
+  return { family, order, rippleDb, rejectionDb, passEdgeRad, stopEdgeRad, filter, complement };
 }
 
 /** What a low-pass rejects from `edgeRad` on: its equiripple level beyond its own stop edge, monotone before it. */
@@ -164,6 +161,7 @@ export function halfBandCandidateOf(
       ...(family === 'ELLIPTIC' ? { stopEdgeRad } : {}),
     });
     const rippleDb = isolationOfRipple(isolationDb);
+    const filter = rotateFilter(prototype, demand.centreRad);
     return {
       family,
       order: odd,
@@ -171,7 +169,8 @@ export function halfBandCandidateOf(
       rejectionDb: isolationDb,
       passEdgeRad: Math.PI - stopEdgeRad,
       stopEdgeRad,
-      filter: rotateFilter(prototype, demand.centreRad),
+      filter,
+      complement: () => complementOfHalfBand(filter),
     };
   }
   return null;

@@ -1,6 +1,7 @@
 /** The family form, all shapes but the interleaver: the filter exactly as its parameters state it. */
 import { HALF_POWER_DB } from '../../conventions.ts';
-import { designLowPass, rotateFilter } from '../bands.ts';
+import { type BandAsk, designLowPass, rotateFilter } from '../bands.ts';
+import { complementOf } from '../complement.ts';
 import { naturalStopEdgeRad, reachablePassEdgeRad, reachableRejectionDb } from '../order.ts';
 import type { Band, FamilySpecification, IntervalGhz } from '../specification.ts';
 import { leastOrderOf } from './candidates.ts';
@@ -18,12 +19,13 @@ export function planFamily(spec: FamilySpecification, fsrGhz: number, capacity: 
     refuseNoRoom(spec, geometry, fsrGhz);
   const order = spec.order ?? orderOf(spec, geometry);
   requireWithin(spec, geometry, order, capacity, fsrGhz);
-  const prototype = designLowPass({
+  const ask: BandAsk = {
     family: spec.family,
     order,
     edgeRad: designEdge(spec, geometry),
     ...levels(spec),
-  });
+  };
+  const filter = rotateFilter(designLowPass(ask), geometry.centreRad);
   const passRad =
     passEdgeRad ??
     reachablePassEdgeRad(spec.family, order, {
@@ -41,7 +43,8 @@ export function planFamily(spec: FamilySpecification, fsrGhz: number, capacity: 
     stopEdgeRad: stopRad,
     rippleDb: allowanceOf(spec),
     rejectionDb: spec.rejectionDb ?? null,
-    filter: rotateFilter(prototype, geometry.centreRad),
+    filter,
+    complement: () => complementOf(ask, filter, geometry.centreRad),
     mask: { bands: maskBands(spec, geometry.centreRad, passRad, stopRad, fsrGhz), reference: 'PEAK' },
   };
 }

@@ -6,6 +6,7 @@
 import { HALF_POWER_DB } from '../../conventions.ts';
 import { Refusal } from '../../errors.ts';
 import { rotateFilter } from '../bands.ts';
+import { complementOfHalfBand } from '../complement.ts';
 import {
   designHalfBand,
   type HalfBandFamily,
@@ -45,6 +46,7 @@ export function planInterleaver(spec: FamilySpecification, fsrGhz: number, capac
     ...(family === 'ELLIPTIC' ? { stopEdgeRad: edgeRad! } : {}),
   });
   const centreRad = (TURN * spec.centreGhz) / fsrGhz;
+  const filter = rotateFilter(prototype, centreRad);
   const isolationDb = edgeRad === null ? null : halfBandIsolationDb(family, order, edgeRad);
   return {
     family,
@@ -55,7 +57,8 @@ export function planInterleaver(spec: FamilySpecification, fsrGhz: number, capac
     stopEdgeRad: edgeRad,
     rippleDb: isolationDb === null ? HALF_POWER_DB : -complementDb(-isolationDb),
     rejectionDb: spec.rejectionDb ?? isolationDb,
-    filter: rotateFilter(prototype, centreRad),
+    filter,
+    complement: () => complementOfHalfBand(filter),
     mask: { bands: windowBands(spec, edgeRad, isolationDb, fsrGhz), reference: 'PEAK' },
   };
 }

@@ -32,17 +32,5 @@ function plansOf(
 }
 
 function planOf(candidate: Candidate, mask: MaskSpecification, { demand, output }: MaskDemand): FilterPlan {
-  const { family, order, filter, passEdgeRad, stopEdgeRad, rippleDb, rejectionDb } = candidate;
-  return {
-    family,
-    order,
-    output,
-    centreRad: demand.centreRad,
-    passEdgeRad,
-    stopEdgeRad,
-    rippleDb,
-    rejectionDb,
-    filter,
-    mask,
-  };
+  return { ...candidate, output, centreRad: demand.centreRad, mask };
 }

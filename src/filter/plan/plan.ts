@@ -1,5 +1,5 @@
 import type { Family, MaskSpecification, OutputPort } from '../specification.ts';
-import type { LabelledFilter } from '../transfer-function.ts';
+import type { LabelledFilter, TransferFunction } from '../transfer-function.ts';
 
 /** The greatest order a specification may ask for; the core is checked to it against published designs. */
 export const MAX_DESIGN_ORDER = 16;
@@ -36,6 +36,8 @@ export interface FilterPlan {
   readonly rippleDb: number;
   readonly rejectionDb: number | null;
   readonly filter: LabelledFilter;
+  /** What the other output of a lossless pair carries; worked out when asked for. */
+  readonly complement: () => TransferFunction;
   /** What is judged. */
   readonly mask: MaskSpecification;
 }
