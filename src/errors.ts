@@ -41,6 +41,9 @@ export interface RefusalDetails {
   readonly given?: unknown;
   readonly allowed?: unknown;
   readonly limit?: LimitKind;
+  /** The chip element or driver channel that stands in the way. */
+  readonly element?: string;
+  readonly channel?: string;
   readonly nearest?: readonly Suggestion[];
 }
 

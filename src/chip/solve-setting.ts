@@ -1,0 +1,232 @@
+/** A placed circuit as heater currents: phases, powers through crosstalk with the least heat, currents in driver steps. */
+import { Refusal } from '../errors.ts';
+import { type BranchSolution, searchBranches } from './branches.ts';
+import { cautionsOf } from './cautions.ts';
+import { channelLimit, currentMa, powerMw, roundToStep } from './currents.ts';
+import { phaseGain, phasesFromPowers } from './heaters.ts';
+import { invert } from './linear.ts';
+import type { ChipModel } from './model.ts';
+import type { PlacedCircuit } from './placed.ts';
+import type { ChannelSetting, ChannelState, Setting } from './setting.ts';
+import {
+  type PhaseDemand,
+  type ThermalTargets,
+  thermalTargets,
+  UNDRIVEN_SLACK,
+  wantedPhase,
+} from './targets.ts';
+import { exchangeTurns, isBetter, leastTurns, type WrapProblem, type WrapSolution } from './wraps.ts';
+
+const TURN = 2 * Math.PI;
+
+/** Beyond this the heaters used cannot be told apart and powers would be rounding noise. */
+const MAX_CONDITION = 1e6;
+
+/** So many of the best branch choices go into the exchange of turns. */
+const BRANCHES_TO_POLISH = 8;
+
+/** mW of limit counted for each rad of an undriven element that a branch choice leaves wrong: it outweighs any heat. */
+const UNDRIVEN_PENALTY_MW = 1e9;
+
+interface Heating {
+  readonly demands: readonly (PhaseDemand & { readonly channel: number })[];
+  readonly resting: readonly PhaseDemand[];
+  readonly problem: WrapProblem;
+}
+
+const isDriven = (demand: PhaseDemand): demand is PhaseDemand & { readonly channel: number } =>
+  demand.channel !== null;
+
+function heatingOf(targets: ThermalTargets, chip: ChipModel): Heating {
+  const demands = targets.demands.filter(isDriven);
+  const m = demands.length;
+  const gain = new Float64Array(m * m);
+  demands.forEach((demand, row) => {
+    demands.forEach((other, column) => {
+      for (const { channel, weight } of demand.terms)
+        gain[row * m + column]! += weight * phaseGain(chip, channel, other.channel);
+    });
+  });
+  const inverted = invert(gain, m);
+  if (inverted === null || inverted.condition > MAX_CONDITION)
+    throw new Refusal({
+      code: 'SETTING_UNREACHABLE',
+      detail:
+        "The crosstalk matrix of this chip's channels is nearly singular: the heaters cannot be set apart.",
+      given: inverted?.condition ?? null,
+      allowed: { max: MAX_CONDITION },
+    });
+  const channels = demands.map((demand) => chip.channels[demand.channel]!);
+  const problem: WrapProblem = {
+    gain,
+    inverse: inverted.inverse,
+    floorMw: Float64Array.from(channels, (channel) => chip.heaterFloorRad / channel.phasePerMw),
+    limitMw: Float64Array.from(channels, (channel) =>
+      powerMw(roundToStep(channelLimit(channel).currentMa, channel), channel.resistanceOhm),
+    ),
+  };
+  return { demands, resting: targets.demands.filter((demand) => !isDriven(demand)), problem };
+}
+
+const offTurn = (phaseRad: number): number => Math.abs(phaseRad - TURN * Math.round(phaseRad / TURN));
+
+/** Wanted phases less the phases at zero power. */
+function liftFromRest(demands: readonly PhaseDemand[], chip: ChipModel, branches: Uint8Array): Float64Array {
+  return Float64Array.from(demands, (demand) =>
+    demand.terms.reduce(
+      (phase, { channel, weight }) => phase - weight * chip.channels[channel]!.phaseAtZeroRad,
+      wantedPhase(demand, branches),
+    ),
+  );
+}
+
+function leastHeat(heating: Heating, targets: ThermalTargets, chip: ChipModel): BranchSolution {
+  const { demands, resting, problem } = heating;
+  const missed = (branches: Uint8Array) =>
+    resting.reduce((sum, demand) => sum + offTurn(wantedPhase(demand, branches)), 0);
+  const evaluate = (branches: Uint8Array): WrapSolution => {
+    const solution = leastTurns(problem, liftFromRest(demands, chip, branches));
+    const penalty = UNDRIVEN_PENALTY_MW * missed(branches);
+    return resting.length === 0 ? solution : { ...solution, violationMw: solution.violationMw + penalty };
+  };
+  const polished = searchBranches(targets.branches, evaluate, BRANCHES_TO_POLISH).map((candidate) => {
+    const exchanged = exchangeTurns(
+      problem,
+      leastTurns(problem, liftFromRest(demands, chip, candidate.branches)),
+    );
+    const penalty = UNDRIVEN_PENALTY_MW * missed(candidate.branches);
+    const violationMw = exchanged.violationMw + (resting.length === 0 ? 0 : penalty);
+    return { branches: candidate.branches, solution: { ...exchanged, violationMw } };
+  });
+  const best = polished.reduce((a, b) => (isBetter(b.solution, a.solution) ? b : a));
+  for (const demand of resting) {
+    const wanted = wantedPhase(demand, best.branches);
+    if (offTurn(wanted) > UNDRIVEN_SLACK)
+      throw new Refusal({
+        code: 'SETTING_UNREACHABLE',
+        detail: `${demand.path} would need a phase of ${wanted.toPrecision(6)} rad; no channel drives it.`,
+        element: demand.path,
+        given: wanted,
+        allowed: 0,
+      });
+  }
+  return best;
+}
+
+function checkLimits(heating: Heating, solution: WrapSolution, chip: ChipModel): void {
+  const { demands, problem } = heating;
+  let worst = -1;
+  let excess = 0;
+  if (solution.violationMw > 0)
+    solution.powersMw.forEach((power, i) => {
+      const over = (power - problem.limitMw[i]!) / problem.limitMw[i]!;
+      if (over > excess) {
+        worst = i;
+        excess = over;
+      }
+    });
+  if (worst >= 0) {
+    const channel = chip.channels[demands[worst]!.channel]!;
+    const limit = channelLimit(channel);
+    const byPower = limit.kind === 'CHANNEL_POWER';
+    const needed = currentMa(solution.powersMw[worst]!, channel.resistanceOhm);
+    throw new Refusal({
+      code: 'SETTING_UNREACHABLE',
+      limit: limit.kind,
+      detail:
+        `Channel ${channel.channel} (${channel.drives}) would need ${needed.toFixed(4)} mA, ` +
+        `${solution.powersMw[worst]!.toFixed(3)} mW; its ${byPower ? 'power' : 'current'} limit allows ` +
+        `${limit.currentMa.toFixed(4)} mA.`,
+      channel: channel.channel,
+      element: channel.drives,
+      given: byPower ? solution.powersMw[worst]! : needed,
+      allowed: byPower ? channel.powerLimitMw : channel.currentLimitMa,
+    });
+  }
+}
+
+function checkTotal(chip: ChipModel, totalPowerMw: number): void {
+  const limit = chip.totalPowerLimitMw;
+  if (limit === undefined || totalPowerMw <= limit) return;
+  throw new Refusal({
+    code: 'SETTING_UNREACHABLE',
+    limit: 'TOTAL_POWER',
+    detail: `All heaters together would take ${totalPowerMw.toFixed(3)} mW; the chip allows ${limit} mW.`,
+    given: totalPowerMw,
+    allowed: limit,
+  });
+}
+
+function stateOf(path: string, used: boolean, placed: PlacedCircuit): ChannelState {
+  if (!used) return 'UNUSED';
+  return placed.parked.some(({ element }) => path.startsWith(`${element}.`)) ? 'PARKED' : 'ACTIVE';
+}
+
+function channelSettings(
+  chip: ChipModel,
+  heatMw: Float64Array,
+  used: ReadonlySet<number>,
+  placed: PlacedCircuit,
+): ChannelSetting[] {
+  const currents = chip.channels.map((channel, i) =>
+    roundToStep(currentMa(heatMw[i]!, channel.resistanceOhm), channel),
+  );
+  const powers = chip.channels.map((channel, i) => powerMw(currents[i]!, channel.resistanceOhm));
+  const phases = phasesFromPowers(chip, powers);
+  return chip.channels.map((channel, i) => ({
+    channel: channel.channel,
+    drives: channel.drives,
+    state: stateOf(channel.drives, used.has(i), placed),
+    currentMa: currents[i]!,
+    powerMw: powers[i]!,
+    phaseRad: phases[i]!,
+    wraps: Math.floor(phases[i]! / TURN),
+    limitMa: channelLimit(channel).currentMa,
+  }));
+}
+
+/** Set less wanted phase of every demand that shapes the response; cells that only pass light on are left out. */
+function roundingErrors(
+  heating: Heating,
+  branches: Uint8Array,
+  channels: readonly ChannelSetting[],
+  placed: PlacedCircuit,
+): number[] {
+  const passed = placed.parked.filter(({ element }) => !element.includes('.'));
+  return heating.demands
+    .filter(({ path }) => !passed.some(({ element }) => path.startsWith(`${element}.`)))
+    .map((demand) => {
+      const set = demand.terms.reduce(
+        (sum, { channel, weight }) => sum + weight * channels[channel]!.phaseRad,
+        0,
+      );
+      return offTurn(set - wantedPhase(demand, branches));
+    });
+}
+
+/**
+ * The setting that makes the chip the placed circuit with the least total heat found: coupler branches, whole turns,
+ * crosstalk, driver steps; every channel of the chip in its order, heaters that nothing depends on at 0.
+ *
+ * The circuit's parameters are those of the lossless placed circuit; losses do not change phases. Throws a Refusal
+ * SETTING_UNREACHABLE with limit CHANNEL_CURRENT, CHANNEL_POWER or TOTAL_POWER and the channel named, or with the element
+ * that no channel drives.
+ */
+export function solveSetting(placed: PlacedCircuit, chip: ChipModel): Setting {
+  const targets = thermalTargets(placed, chip);
+  const heating = heatingOf(targets, chip);
+  const { branches, solution } = leastHeat(heating, targets, chip);
+  checkLimits(heating, solution, chip);
+  const heatMw = new Float64Array(chip.channels.length);
+  heating.demands.forEach((demand, i) => {
+    heatMw[demand.channel] = Math.max(0, solution.powersMw[i]!);
+  });
+  const used = new Set(heating.demands.map((demand) => demand.channel));
+  const channels = channelSettings(chip, heatMw, used, placed);
+  const totalPowerMw = channels.reduce((sum, channel) => sum + channel.powerMw, 0);
+  checkTotal(chip, totalPowerMw);
+  const phaseErrorsRad = roundingErrors(heating, branches, channels, placed);
+  const { undriven } = targets;
+  const cautions = cautionsOf({ chip, placed, channels, totalPowerMw, phaseErrorsRad, undriven });
+  return { channels, totalPowerMw, parked: placed.parked, cautions };
+}
