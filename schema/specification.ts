@@ -1,4 +1,4 @@
-/** What a filter specification must be to make sense, before any chip is looked at. */
+/** Shapes, types and ranges of a filter specification. What physics and filter theory refuse, the core refuses. */
 import { z } from 'zod';
 import { LIMITS } from './limits.ts';
 import { type OneOf, oneOfRule } from './one-of.ts';
@@ -18,14 +18,8 @@ const GREATEST_RIPPLE_DB = 40;
 export const outputRule = z.enum(OUTPUTS);
 const orderRule = z.int().min(1).max(LIMITS.order);
 
-type Issues = z.core.$ZodRawIssue[];
-
-function contradict(issues: Issues, member: string, input: unknown, message: string, fix?: object): void {
-  const params = { code: 'SPECIFICATION_INVALID', ...(fix === undefined ? {} : { fix }) };
-  issues.push({ code: 'custom', path: [member], input, message, params });
-}
-
-const familyShape = z.strictObject({
+/** Which members a family and a shape take is decided by the core, which knows what they mean. */
+export const familySpecificationRule = z.strictObject({
   family: z.enum(FAMILIES),
   shape: z.enum(SHAPES),
   order: orderRule.optional(),
@@ -38,69 +32,7 @@ const familyShape = z.strictObject({
   output: outputRule.optional(),
 });
 
-export type FamilySpecificationInput = z.infer<typeof familyShape>;
-
-const leaveOut = (member: string) => ({ reason: `without ${member}`, works: null });
-
-function checkMembers(spec: FamilySpecificationInput, issues: Issues): void {
-  const isInterleaver = spec.shape === 'INTERLEAVER';
-  if (isInterleaver && spec.band !== undefined) {
-    const message = 'does not belong to an INTERLEAVER, which passes half of the free spectral range';
-    contradict(issues, 'band', spec.band, message, leaveOut('band'));
-  }
-  if (!isInterleaver && spec.band === undefined) {
-    contradict(issues, 'band', undefined, `is missing; ${spec.shape} needs the interval between its edges`);
-  }
-  if (!isInterleaver && spec.gridGhz !== undefined) {
-    contradict(issues, 'gridGhz', spec.gridGhz, 'belongs to an INTERLEAVER only', leaveOut('gridGhz'));
-  }
-  if (isInterleaver && (spec.family === 'CHEBYSHEV_I' || spec.family === 'CHEBYSHEV_II')) {
-    const message = 'makes no INTERLEAVER: only BUTTERWORTH and ELLIPTIC half-bands are power symmetric';
-    contradict(issues, 'family', spec.family, message);
-  }
-}
-
-function checkLevels(spec: FamilySpecificationInput, issues: Issues): void {
-  const { family, shape, rippleDb, rejectionDb } = spec;
-  const needsRipple = family === 'CHEBYSHEV_I' || (family === 'ELLIPTIC' && shape !== 'INTERLEAVER');
-  const needsRejection = family === 'CHEBYSHEV_II' || family === 'ELLIPTIC';
-  if (needsRipple && rippleDb === undefined) {
-    contradict(issues, 'rippleDb', undefined, `is missing; ${family} needs its passband ripple`);
-  }
-  if (family === 'BUTTERWORTH' && rippleDb !== undefined) {
-    const message = 'does not belong to BUTTERWORTH, whose edges are its −3.0103 dB points';
-    contradict(issues, 'rippleDb', rippleDb, message, leaveOut('rippleDb'));
-  }
-  if (needsRejection && rejectionDb === undefined) {
-    contradict(issues, 'rejectionDb', undefined, `is missing; ${family} needs its rejection`);
-  }
-  if (rippleDb !== undefined && rejectionDb !== undefined && rejectionDb <= rippleDb) {
-    contradict(issues, 'rejectionDb', rejectionDb, `must be more than the ripple of ${rippleDb} dB`);
-  }
-}
-
-/** The order is given, or what determines it is. */
-function checkOrder(spec: FamilySpecificationInput, issues: Issues): void {
-  const { order, shape, stopband, rejectionDb } = spec;
-  if (stopband !== undefined && rejectionDb === undefined) {
-    contradict(issues, 'rejectionDb', undefined, 'is missing; a stopband needs the rejection it asks for');
-  }
-  if (order !== undefined || (shape === 'INTERLEAVER' && rejectionDb !== undefined)) return;
-  if (stopband === undefined || rejectionDb === undefined) {
-    contradict(
-      issues,
-      'order',
-      undefined,
-      'is missing; give it, or stopband and rejectionDb to find the least',
-    );
-  }
-}
-
-export const familySpecificationRule = familyShape.check(({ value, issues }) => {
-  checkMembers(value, issues);
-  checkLevels(value, issues);
-  checkOrder(value, issues);
-});
+export type FamilySpecificationInput = z.infer<typeof familySpecificationRule>;
 
 /** dB of transmission are never positive on a passive chip; a rejection written as 40 means −40. */
 const transmissionRule = z.number().check(({ value, issues }) => {
@@ -121,42 +53,28 @@ const transmissionRule = z.number().check(({ value, issues }) => {
   });
 });
 
-const bandShape = z.strictObject({
-  interval: intervalRule,
-  minTransmissionDb: transmissionRule.optional(),
-  maxTransmissionDb: transmissionRule.optional(),
-  output: outputRule.optional(),
-  label: textRule(LIMITS.labelCharacters).optional(),
-});
-
-export type BandInput = z.infer<typeof bandShape>;
-
-export const bandRule = bandShape.check(({ value, issues }) => {
-  const { minTransmissionDb: least, maxTransmissionDb: most } = value;
-  if (least === undefined && most === undefined) {
-    contradict(
-      issues,
-      'minTransmissionDb',
-      undefined,
-      'or maxTransmissionDb is missing; a band asks for one at least',
-    );
-  }
-  if (least !== undefined && most !== undefined && least > most) {
-    contradict(issues, 'minTransmissionDb', least, `must not be above maxTransmissionDb ${most}`);
-  }
-});
-
-export const maskSpecificationRule = z
+export const bandRule = z
   .strictObject({
-    bands: z.array(bandRule).min(1).max(LIMITS.bands),
-    family: z.enum(FAMILIES).optional(),
-    order: orderRule.optional(),
-    reference: z.enum(REFERENCES).optional(),
+    interval: intervalRule,
+    minTransmissionDb: transmissionRule.optional(),
+    maxTransmissionDb: transmissionRule.optional(),
+    output: outputRule.optional(),
+    label: textRule(LIMITS.labelCharacters).optional(),
   })
   .check(({ value, issues }) => {
-    if (value.bands.some((band) => band.minTransmissionDb !== undefined)) return;
-    contradict(issues, 'bands', value.bands, 'let nothing pass; at least one band needs minTransmissionDb');
+    if (value.minTransmissionDb !== undefined || value.maxTransmissionDb !== undefined) return;
+    const message = 'asks for nothing; minTransmissionDb or maxTransmissionDb is needed';
+    issues.push({ code: 'custom', input: value, message, params: { code: 'SPECIFICATION_INVALID' } });
   });
+
+export type BandInput = z.infer<typeof bandRule>;
+
+export const maskSpecificationRule = z.strictObject({
+  bands: z.array(bandRule).min(1).max(LIMITS.bands),
+  family: z.enum(FAMILIES).optional(),
+  order: orderRule.optional(),
+  reference: z.enum(REFERENCES).optional(),
+});
 
 export type MaskSpecificationInput = z.infer<typeof maskSpecificationRule>;
 
