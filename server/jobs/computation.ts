@@ -18,7 +18,7 @@
  */
 import type { Logger } from 'pino';
 import { problemOf, problemOfRefusal } from '../errors.ts';
-import type { Computations } from '../store/index.ts';
+import type { ComputationRecord, Computations, Store } from '../store/index.ts';
 import type { ThreadAnswer } from './answer.ts';
 import { persist } from './persist.ts';
 import type { Threads } from './threads.ts';
@@ -45,9 +45,13 @@ export class SupersededError extends Error {
 type Stop = 'CANCELLED' | 'TIMED_OUT' | 'SUPERSEDED';
 
 interface Run {
-  readonly stop: (why: Stop) => void;
-  readonly done: Promise<void>;
+  /** Its reason is a `Stop`; the first one counts. */
+  readonly stopping: AbortController;
+  readonly shutdown: AbortSignal;
+  done: Promise<void>;
   successor?: Promise<void>;
+  /** Asks the store whether this run still counts. */
+  recheck: () => void;
 }
 
 export interface Computing {
@@ -55,6 +59,8 @@ export interface Computing {
   run(id: string, shutdown: AbortSignal): Promise<void>;
   /** Its last asker left. */
   cancel(id: string): void;
+  /** Events may have been missed: every run asks whether it still counts. */
+  recheck(): void;
   readonly count: number;
 }
 
@@ -62,105 +68,105 @@ export function computing(deps: ComputationDeps): Computing {
   const runs = new Map<string, Run>();
   return {
     run(id, shutdown) {
-      const controller = new AbortController();
       const before = runs.get(id);
-      let settle: (outcome: Promise<void>) => void = () => {};
       const run: Run = {
-        stop: (why) => controller.abort(why),
-        done: new Promise((resolve) => {
-          settle = resolve;
-        }),
+        stopping: new AbortController(),
+        shutdown,
+        done: Promise.resolve(),
+        recheck: () => {},
       };
       // Registered before the computation is started: a cancellation that commits after the start finds it here.
       runs.set(id, run);
+      run.done = compute(deps, id, run)
+        .catch((error: unknown) => {
+          if (error instanceof SupersededError && run.successor !== undefined) return run.successor;
+          throw error;
+        })
+        .finally(() => {
+          if (runs.get(id) === run) runs.delete(id);
+        });
       if (before !== undefined) {
         // This very process was taken for dead and got its own job again. Both runs hold the job in the queue's eyes,
         // so the older one must end as the newer one does.
         before.successor = run.done;
-        before.stop('SUPERSEDED');
+        before.stopping.abort('SUPERSEDED' satisfies Stop);
       }
-      settle(
-        compute(deps, id, controller.signal, shutdown)
-          .catch((error: unknown) => {
-            if (error instanceof SupersededError && run.successor !== undefined) return run.successor;
-            throw error;
-          })
-          .finally(() => {
-            if (runs.get(id) === run) runs.delete(id);
-          }),
-      );
       return run.done;
     },
-    cancel: (id) => runs.get(id)?.stop('CANCELLED'),
+    cancel: (id) => runs.get(id)?.stopping.abort('CANCELLED' satisfies Stop),
+    recheck: () => {
+      for (const run of runs.values()) run.recheck();
+    },
     get count() {
       return runs.size;
     },
   };
 }
 
-async function compute(
-  deps: ComputationDeps,
-  id: string,
-  stop: AbortSignal,
-  shutdown: AbortSignal,
-): Promise<void> {
-  const { store, threads, logger, timeoutS } = deps;
-  const computation = await store.startComputation(id);
+async function compute(deps: ComputationDeps, id: string, run: Run): Promise<void> {
+  const computation = await deps.store.startComputation(id);
   if (computation === null) return;
-  const { attempt, canonical, model } = computation;
-  const log = logger.child({ computation: id, attempt });
-  const superseded = (): never => {
-    throw new SupersededError(`computation ${id}, attempt ${attempt}: another run counts`);
-  };
-  const inner = new AbortController();
-  const deadline = setTimeout(() => inner.abort('TIMED_OUT' satisfies Stop), timeoutS * 1000);
-  const progress = throttleRising((fraction) => {
-    store.reportProgress(id, attempt, fraction).then(
-      (accepted) => {
-        if (!accepted) inner.abort('SUPERSEDED' satisfies Stop);
-      },
-      (error: unknown) => log.warn({ err: error }, 'progress not reported'),
-    );
-  }, PROGRESS_INTERVAL_MS);
-  const signal = AbortSignal.any([stop, inner.signal, shutdown]);
+  const { attempt } = computation;
+  const logger = deps.logger.child({ computation: id, attempt });
   const startedAt = performance.now();
-  let answer: ThreadAnswer;
-  try {
-    signal.throwIfAborted();
-    answer = await threads.compute(
-      { canonical, model },
-      (fraction) => progress(Math.min(fraction, 1)),
-      signal,
+  const answer = await answerOf({ ...deps, logger }, computation, run);
+  const stored =
+    typeof answer === 'object' || answer === 'TIMED_OUT'
+      ? await persist(() => store(deps, computation, answer), run.shutdown, logger)
+      : false;
+  const outcome = typeof answer === 'object' ? answer.outcome : answer;
+  logger.info({ outcome, stored, ms: Math.round(performance.now() - startedAt) }, 'computation ended');
+  if (!stored && run.stopping.signal.reason !== ('CANCELLED' satisfies Stop))
+    throw new SupersededError(`computation ${id}, attempt ${attempt}: another run counts`);
+}
+
+type Started = NonNullable<Awaited<ReturnType<Store['startComputation']>>>;
+
+/** What the thread answers, or why it was ended. @throws what the computation throws, and at shutdown. */
+async function answerOf(
+  { store, threads, logger, timeoutS }: ComputationDeps,
+  { id, attempt, canonical, model }: Started,
+  run: Run,
+): Promise<ThreadAnswer | Stop> {
+  const stop = (why: Stop): void => run.stopping.abort(why);
+  let reached = 0;
+  const report = (fraction: number): void => {
+    reached = fraction;
+    store.reportProgress(id, attempt, fraction).then(
+      (counts) => {
+        if (!counts) stop('SUPERSEDED');
+      },
+      (error: unknown) => logger.warn({ err: error }, 'progress not reported'),
     );
+  };
+  const progress = throttleRising(report, PROGRESS_INTERVAL_MS);
+  const deadline = setTimeout(() => stop('TIMED_OUT'), timeoutS * 1000);
+  run.recheck = () => report(reached);
+  try {
+    const signal = AbortSignal.any([run.stopping.signal, run.shutdown]);
+    signal.throwIfAborted();
+    return await threads.compute({ canonical, model }, (fraction) => progress(Math.min(fraction, 1)), signal);
   } catch (error) {
-    const why = stop.aborted ? stop.reason : inner.signal.aborted ? inner.signal.reason : null;
-    if (why === 'CANCELLED') return void log.info('computation cancelled');
-    if (why === 'SUPERSEDED') return superseded();
-    if (why === 'TIMED_OUT') {
-      log.warn({ timeoutS }, 'computation timed out');
-      const problem = problemOf(
-        'COMPUTATION_TIMED_OUT',
-        `The computation took longer than ${timeoutS} s and was ended.`,
-      );
-      if (await persist(() => store.refuseComputation(id, attempt, problem), shutdown, log)) return;
-      return superseded();
-    }
+    if (run.stopping.signal.aborted) return run.stopping.signal.reason as Stop;
     throw error;
   } finally {
     clearTimeout(deadline);
     progress.stop();
+    run.recheck = () => {};
   }
-  const stored = await persist(
-    () =>
-      answer.outcome === 'DESIGN'
-        ? store.finishComputation(id, attempt, answer.design, answer.resultHash)
-        : store.refuseComputation(id, attempt, problemOfRefusal(answer.details)),
-    shutdown,
-    log,
-  );
-  if (!stored && !(stop.aborted && stop.reason === 'CANCELLED')) superseded();
-  log.info(
-    { outcome: answer.outcome, stored, ms: Math.round(performance.now() - startedAt) },
-    'computation ended',
-  );
+}
+
+/** False: fenced off. */
+function store(
+  deps: ComputationDeps,
+  { id, attempt }: Pick<ComputationRecord, 'id' | 'attempt'>,
+  answer: ThreadAnswer | 'TIMED_OUT',
+): Promise<boolean> {
+  if (answer === 'TIMED_OUT') {
+    const detail = `The computation took longer than ${deps.timeoutS} s and was ended.`;
+    return deps.store.refuseComputation(id, attempt, problemOf('COMPUTATION_TIMED_OUT', detail));
+  }
+  if (answer.outcome === 'REFUSED')
+    return deps.store.refuseComputation(id, attempt, problemOfRefusal(answer.details));
+  return deps.store.finishComputation(id, attempt, answer.design, answer.resultHash);
 }

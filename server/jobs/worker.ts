@@ -7,14 +7,14 @@
  */
 import { EventEmitter } from 'node:events';
 import { setTimeout as sleep } from 'node:timers/promises';
-import { type JobHelpers, makeWorkerUtils, type Runner, run, type WorkerEvents } from 'graphile-worker';
+import { type JobHelpers, makeWorkerUtils, run, type WorkerEvents } from 'graphile-worker';
 import type { Logger } from 'pino';
 import { z } from 'zod';
 import { ENGINE_VERSION } from '../../src/conventions.ts';
 import type { Store } from '../store/index.ts';
 import { computing } from './computation.ts';
-import { startLiveness } from './liveness.ts';
 import { queueLogger } from './queue-logger.ts';
+import { startSweeper } from './sweeper.ts';
 import { startThreads } from './threads.ts';
 
 /** Other engines' jobs are left alone, so old and new processes can run side by side. */
@@ -48,20 +48,21 @@ export interface Worker {
 }
 
 interface Queue {
-  readonly runner: Runner;
-  readonly poolIds: readonly string[];
+  /** Settles when the queue ended, whoever ended it. */
+  readonly ended: Promise<void>;
+  stop(): Promise<void>;
 }
 
-async function startQueue(
-  options: WorkerOptions,
-  task: (payload: unknown, job: JobHelpers) => Promise<void>,
-): Promise<Queue> {
+type Task = (payload: unknown, job: JobHelpers) => Promise<void>;
+
+async function startQueue(options: WorkerOptions, task: Task): Promise<Queue> {
+  const { store, logger } = options;
   const events = new EventEmitter() as WorkerEvents;
   const poolIds: string[] = [];
   events.on('pool:create', ({ workerPool }) => poolIds.push(workerPool.id));
   const runner = await run({
     // A pool of our own making: with a connection string a job aborted at shutdown would stay locked.
-    pgPool: options.store.pool,
+    pgPool: store.pool,
     noHandleSignals: true,
     taskList: { [TASK]: task },
     events,
@@ -70,77 +71,85 @@ async function startQueue(
         concurrentJobs: options.threads,
         pollInterval: POLL_INTERVAL_MS,
         gracefulShutdownAbortTimeout: options.drainS * 1000,
-        logger: queueLogger(options.logger),
+        logger: queueLogger(logger),
       },
     },
   });
-  return { runner, poolIds };
+  const ended = runner.promise.catch((error: unknown) => logger.warn({ err: error }, 'the queue ended'));
+  try {
+    const registration = await store.registerWorker(poolIds, ENGINE_VERSION);
+    return {
+      ended: ended.then(() => registration.release()),
+      stop: () => runner.stop().catch(() => {}),
+    };
+  } catch (error) {
+    await runner.stop();
+    throw error;
+  }
+}
+
+/** Keeps a queue running: the library ends its own when it could not write a job's end. */
+async function superviseQueue(options: WorkerOptions, task: Task): Promise<() => Promise<void>> {
+  let stopping = false;
+  let queue = await startQueue(options, task);
+  const supervise = async (): Promise<void> => {
+    for (;;) {
+      await queue.ended;
+      if (stopping) return;
+      await sleep(RESTART_PAUSE_MS);
+      await startQueue(options, task).then(
+        async (next) => {
+          queue = next;
+          if (stopping) await next.stop();
+        },
+        (error: unknown) => options.logger.warn({ err: error }, 'the queue does not start yet'),
+      );
+    }
+  };
+  const supervising = supervise();
+  return async () => {
+    stopping = true;
+    await queue.stop();
+    await supervising;
+  };
 }
 
 /** Starts a worker on a migrated database; ready to compute when it returns. */
 export async function startWorker(options: WorkerOptions): Promise<Worker> {
   const { store, logger } = options;
   const threads = await startThreads(options.threads, options.threadFile);
-  const computations = computing({
-    store,
-    threads,
-    logger,
-    timeoutS: options.computationTimeoutS,
-  });
+  const computations = computing({ store, threads, logger, timeoutS: options.computationTimeoutS });
   const unsubscribe = store.notifications.subscribe((event) => {
     if (event.kind === 'CANCEL') computations.cancel(event.id);
+    else if (event.kind === 'RECONNECTED') computations.recheck();
   });
   /** Jobs that were aborted by the shutdown, with the attempts they had before. */
-  const givenBack = new Map<string, number>();
-  const task = async (payload: unknown, { job, abortSignal }: JobHelpers): Promise<void> => {
+  const aborted = new Map<string, number>();
+  const stopQueue = await superviseQueue(options, async (payload, { job, abortSignal }) => {
     const { id } = jobRule.parse(payload);
     const shutdown = abortSignal ?? new AbortController().signal;
     try {
       await computations.run(id, shutdown);
     } catch (error) {
-      if (shutdown.aborted) givenBack.set(String(job.id), job.attempts - 1);
+      if (shutdown.aborted) aborted.set(String(job.id), job.attempts - 1);
       throw error;
     }
-  };
-  const liveness = startLiveness({
+  });
+  const { heartbeatFile } = options;
+  const stopSweeper = startSweeper({
     store,
     logger,
-    ...(options.heartbeatFile === undefined ? {} : { heartbeatFile: options.heartbeatFile }),
+    ...(heartbeatFile === undefined ? {} : { heartbeatFile }),
   });
-  let stopping = false;
-  let queue = await startQueue(options, task);
-  await liveness.register(queue.poolIds);
-
-  /** The library ends its runner when it could not write a job's end; the process then starts another. */
-  const supervise = async (): Promise<void> => {
-    while (!stopping) {
-      await queue.runner.promise.catch((error: unknown) => logger.warn({ err: error }, 'the queue ended'));
-      while (!stopping) {
-        await sleep(RESTART_PAUSE_MS);
-        try {
-          queue = await startQueue(options, task);
-          if (stopping) await queue.runner.stop();
-          else await liveness.register(queue.poolIds);
-          break;
-        } catch (error) {
-          logger.warn({ err: error }, 'the queue does not start yet');
-        }
-      }
-    }
-  };
-  const supervising = supervise();
-
   return {
     get running() {
       return computations.count;
     },
     async stop() {
-      stopping = true;
-      await queue.runner.stop().catch(() => {});
-      await supervising;
-      await giveBack(store, givenBack, logger);
+      await stopQueue();
+      await giveBack(store, aborted, logger);
       unsubscribe();
-      await liveness.stop();
+      await stopSweeper();
       await threads.close();
     },
   };
