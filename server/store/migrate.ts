@@ -7,6 +7,7 @@ import { readdir, readFile } from 'node:fs/promises';
 import { join } from 'node:path';
 import { Logger, makeWorkerUtils } from 'graphile-worker';
 import pg from 'pg';
+import { connectionOf } from './connection.ts';
 import { findMigrations } from './migrations-folder.ts';
 
 /** The key that Prisma Migrate takes. */
@@ -58,7 +59,7 @@ async function apply(client: pg.Client, name: string, sql: Buffer, checksum: str
 
 /** The queue's own schema, under the same lock: two first starts at once collide inside it otherwise. */
 async function migrateQueue(databaseUrl: string): Promise<void> {
-  const pool = new pg.Pool({ connectionString: databaseUrl, max: 2 });
+  const pool = new pg.Pool({ ...connectionOf(databaseUrl), max: 2 });
   pool.on('error', () => {});
   pool.on('connect', (connection) => connection.on('error', () => {}));
   try {
@@ -78,7 +79,7 @@ export async function migrate(
   databaseUrl: string,
   folder: string = findMigrations(),
 ): Promise<readonly string[]> {
-  const client = new pg.Client({ connectionString: databaseUrl });
+  const client = new pg.Client(connectionOf(databaseUrl));
   client.on('error', () => {});
   await client.connect();
   try {

@@ -225,6 +225,7 @@ export interface History {
     filter: { chipId?: string; actorId?: string; action?: string; after?: Date; before?: Date },
     page: PageAsk,
   ): Promise<Page<HistoryRecord>>;
+  findHistoryEntry(id: string): Promise<HistoryRecord | null>;
 }
 
 /** What the database tells every process. Re-read on `RECONNECTED`: anything may have happened meanwhile. */
