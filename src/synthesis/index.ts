@@ -1,2 +1,3 @@
-export type { AllPassPair } from './all-pass-pair.ts';
-export { synthesiseAllPassPair } from './all-pass-pair.ts';
+/** From a transfer function to circuits: the all-pass pair and the cascade of sections. */
+export { type RealisedPair, synthesiseAllPassPair } from './all-pass-pair.ts';
+export { type CellLosses, refuseUndercoupled, withLosses } from './interferometer.ts';

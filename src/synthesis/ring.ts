@@ -3,8 +3,9 @@
  * Source: C. K. Madsen and J. H. Zhao, "Optical Filter Design and Analysis" (Wiley, 1999), section 3.3 (from memory).
  */
 import { Complex } from 'complex.js';
-import type { RingParameters } from '../circuit/circuit.ts';
+import type { RingParameters } from '../circuit/index.ts';
 import { Refusal } from '../errors.ts';
+import type { OutputPort } from '../filter/index.ts';
 
 const TURN = 2 * Math.PI;
 
@@ -35,12 +36,6 @@ export function ringOfPole(pole: Complex): RingParameters {
   return { powerCrossCoupling, phaseRad, lossDb: 0, delay: 1 };
 }
 
-/** t·a·e^(−jφ), the pole of a unit-delay ring, its waveguide loss included. */
-export function poleOfRing(ring: RingParameters): Complex {
-  const radius = Math.sqrt(1 - ring.powerCrossCoupling) * 10 ** (-ring.lossDb / 20);
-  return new Complex(radius * Math.cos(ring.phaseRad), -radius * Math.sin(ring.phaseRad));
-}
-
 /**
  * Field of a lossless unit-delay ring at Ω: (u−q)/(q+t·u), u = 2j·sin(d/2)·e^(−jd/2) = 1−e^(−jd), d = Ω+φ, q = K/(1+t) = 1−t.
  * Exact to a few ulp however narrow the ring, which (t−x)/(1−tx) is not.
@@ -69,4 +64,15 @@ export function ringGroupDelay(ring: RingParameters, omegaRad: number): number {
   const q = ring.powerCrossCoupling / (1 + t);
   const sine = Math.sin(wrapPhase(omegaRad + ring.phaseRad) / 2);
   return ring.powerCrossCoupling / (q * q + 4 * t * sine * sine);
+}
+
+/** Arm phase that puts a null at Ω on `output`: A₀ = ±A₁·e^(−jψ), upper sign on OUT1. */
+export function armPhaseForNull(
+  arms: readonly [readonly RingParameters[], readonly RingParameters[]],
+  output: OutputPort,
+  omegaRad: number,
+): number {
+  const ratio = armField(arms[0], omegaRad).div(armField(arms[1], omegaRad));
+  const sign = output === 'OUT1' ? 1 : -1;
+  return wrapPhase(-Math.atan2(sign * ratio.im, sign * ratio.re));
 }
