@@ -1,7 +1,5 @@
 /** JSON Pointer (RFC 6901) on plain JSON values: making, reading, and changing copies. */
 
-export type PathPart = string | number;
-
 export function pointerOf(path: readonly PropertyKey[]): string {
   return path.map((part) => `/${String(part).replaceAll('~', '~0').replaceAll('/', '~1')}`).join('');
 }
@@ -34,10 +32,18 @@ export interface Edit {
   readonly works: unknown;
 }
 
-/** A deep copy of `root` with the edits made in order. Missing objects on the way are created. */
+/** Changes first, then removals, from the end of lists so that the positions before stay what the pointers mean. */
+function inOrder(edits: readonly Edit[]): Edit[] {
+  const removals = edits.filter((edit) => edit.works === null);
+  const indexOf = (edit: Edit) => Number(partsOf(edit.pointer).at(-1)) || 0;
+  removals.sort((a, b) => indexOf(b) - indexOf(a));
+  return [...edits.filter((edit) => edit.works !== null), ...removals];
+}
+
+/** A deep copy of `root` with the edits made. Missing objects on the way are created. */
 export function withEdits(root: unknown, edits: readonly Edit[]): unknown {
   const copy = structuredClone(root);
-  for (const { pointer, works } of edits) {
+  for (const { pointer, works } of inOrder(edits)) {
     const parts = partsOf(pointer);
     const last = parts.pop();
     if (last === undefined) continue;

@@ -1,6 +1,6 @@
 /** What a zod rule found wrong with a body, as a problem: pointers, what was given, what is allowed, the way out. */
 import type { z } from 'zod';
-import { type Edit, pointerOf, valueAt, withEdits } from '../schema/pointer.ts';
+import { pointerOf, valueAt, withEdits } from '../schema/pointer.ts';
 import type { FieldProblem, Nearest, NearestChange, ProblemCode } from '../schema/problem.ts';
 import { type ProblemError, refuse } from './errors.ts';
 
@@ -10,7 +10,15 @@ type Issue = z.core.$ZodIssue;
 interface CheckParams {
   readonly code?: ProblemCode;
   readonly allowed?: unknown;
-  readonly fix?: { readonly reason: string; readonly changes: readonly NearestChange[] };
+  readonly fix?: Fix;
+}
+
+/** How one issue is mended: another value, possibly in another member beside the one at the issue's path. */
+interface Fix {
+  readonly reason: string;
+  readonly member?: string;
+  readonly works: unknown;
+  readonly unit?: string;
 }
 
 /** Longest `given` that is repeated whole. */
@@ -125,16 +133,31 @@ function fieldOf(
   };
 }
 
+function changesOf(issue: Issue, fix: Fix, body: unknown): NearestChange[] {
+  const pointer = pointerOf(issue.path);
+  const given = valueAt(body, issue.path) ?? null;
+  const { member, works, unit } = fix;
+  const inUnit = unit === undefined ? {} : { unit };
+  const target = member === undefined ? pointer : pointerOf([...issue.path.slice(0, -1), member]);
+  if (target === pointer) return [{ pointer, given, works, ...inUnit }];
+  return [
+    { pointer, given, works: null },
+    { pointer: target, given: null, works, ...inUnit },
+  ];
+}
+
 /** All issues mended at once, if each of them knows how and the result is accepted. */
 function nearestOf(issues: readonly Issue[], body: unknown, accepts: (input: unknown) => boolean): Nearest[] {
-  const fixes = issues.map((issue) => paramsOf(issue).fix);
-  if (fixes.some((fix) => fix === undefined)) return [];
-  const changes = fixes.flatMap((fix) => fix?.changes ?? []);
-  const input = withEdits(body, changes as readonly Edit[]);
+  const fixes = issues.flatMap((issue) => {
+    const { fix } = paramsOf(issue);
+    return fix === undefined ? [] : [{ issue, fix }];
+  });
+  if (fixes.length < issues.length) return [];
+  const changes = fixes.flatMap(({ issue, fix }) => changesOf(issue, fix, body));
+  const input = withEdits(body, changes);
   if (!accepts(input)) return [];
-  const shown = changes.map((change) => ({ ...change, given: jsonSafe(change.given) ?? null }));
-  const reasons = [...new Set(fixes.map((fix) => fix?.reason))];
-  return [{ reason: reasons.join('; '), changes: shown, input }];
+  const reasons = [...new Set(fixes.map(({ fix }) => fix.reason))];
+  return [{ reason: reasons.join('; '), changes, input }];
 }
 
 /**
