@@ -10,7 +10,8 @@
  * real-coefficient filters have real arms, even orders arms conjugate to each other; a rotation changes neither form.
  */
 import { Complex } from 'complex.js';
-import { evaluateInto, transmissionAt } from './evaluate.ts';
+import { evaluateInto } from './evaluate.ts';
+import { findPeak } from './peak.ts';
 import type { LabelledFilter } from './transfer-function.ts';
 
 export interface AllPassPair {
@@ -57,20 +58,6 @@ function quietestNull(filter: LabelledFilter): number {
   return best;
 }
 
-/** Where the passband is: the pole angle of greatest transmission. */
-function brightestPole(filter: LabelledFilter): number {
-  let best = 0;
-  let greatest = -1;
-  for (const pole of filter.poles) {
-    const angle = pole.arg();
-    const transmission = transmissionAt(filter, angle);
-    if (transmission <= greatest) continue;
-    greatest = transmission;
-    best = angle;
-  }
-  return best;
-}
-
 /** Uniform points of the residual's grid; 32 more go around every pole, in steps of its distance to the unit circle. */
 const UNIFORM_POINTS = 512;
 const POINTS_PER_POLE = 32;
@@ -110,7 +97,7 @@ function residual(
 
 /**
  * Splits a filter by its labels. At a null of H the arms cancel, which gives c₁/c₀ without solving anything; the
- * passband then gives c₀. Whoever builds on the pair looks at `residual`: about 1e-14 · order, more (1e-16 / (1 − |p|))
+ * peak then gives c₀. Whoever builds on the pair looks at `residual`: about 1e-14 · order, more (1e-16 / (1 − |p|))
  * for poles very near the unit circle, and of the order of 1 when the labels are wrong. O(order · (512 + 32·order)).
  */
 export function decompose(filter: LabelledFilter): AllPassPair {
@@ -118,7 +105,7 @@ export function decompose(filter: LabelledFilter): AllPassPair {
   const pair = [arms[0]!, arms[1]!] as const;
   const dark = quietestNull(filter);
   const difference = Math.PI + armPhase(pair[0], dark) - armPhase(pair[1], dark);
-  const bright = brightestPole(filter);
+  const bright = findPeak(filter).omegaRad;
   const re = new Float64Array(1);
   const im = new Float64Array(1);
   evaluateInto(filter, new Float64Array([bright]), re, im);

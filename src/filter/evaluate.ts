@@ -84,28 +84,36 @@ export function transmissionAt(filter: TransferFunction, omegaRad: number): numb
   return re[0]! * re[0]! + im[0]! * im[0]!;
 }
 
-/** ½ + (1 − |root|²)/(2·|e^{jΩ} − root|²) without its half: what one factor (e^{jΩ} − root) adds to dφ/dΩ. */
-function turningRate(root: Complex, uRe: number, uIm: number): number {
-  const radius = Math.hypot(root.re, root.im);
-  const dRe = 1 - root.re + uRe;
-  const dIm = uIm - root.im;
-  return ((1 - radius) * (1 + radius)) / (2 * (dRe * dRe + dIm * dIm));
+/** Per root that is not on the unit circle: 1 − Re, −Im, and ±(1 − |root|²)/2, + for poles. */
+function layOutDelays(filter: TransferFunction): Float64Array {
+  const flat: number[] = [];
+  const add = (root: Complex, sign: number): void => {
+    const radius = Math.hypot(root.re, root.im);
+    flat.push(1 - root.re, -root.im, (sign * (1 - radius) * (1 + radius)) / 2);
+  };
+  for (const pole of filter.poles) add(pole, 1);
+  for (const zero of filter.zeros) if (!isOnCircle(zero)) add(zero, -1);
+  return Float64Array.from(flat);
 }
 
 /**
- * Group delay −dφ/dΩ in unit delays at every `omegaRad` into `delay`. A zero on the unit circle contributes its
- * constant −½ (the phase jump at the null itself is not a delay). O(points · order).
+ * Group delay −dφ/dΩ in unit delays at every `omegaRad` into `delay`. A factor (e^{jΩ} − root) turns by
+ * ½ + (1 − |root|²)/(2·|e^{jΩ} − root|²); one on the unit circle by ½ alone (the phase jump at the null itself is not
+ * a delay). O(points · order), nothing allocated per point.
  */
 export function groupDelayInto(filter: TransferFunction, omegaRad: Float64Array, delay: Float64Array): void {
-  const zeros = filter.zeros.filter((zero) => !isOnCircle(zero));
+  const flat = layOutDelays(filter);
   const halves = (filter.poles.length - filter.zeros.length) / 2;
   for (let point = 0; point < omegaRad.length; point++) {
     const half = Math.sin(omegaRad[point]! / 2);
     const uRe = -2 * half * half;
     const uIm = 2 * half * Math.cos(omegaRad[point]! / 2);
     let sum = halves;
-    for (const pole of filter.poles) sum += turningRate(pole, uRe, uIm);
-    for (const zero of zeros) sum -= turningRate(zero, uRe, uIm);
+    for (let at = 0; at < flat.length; at += 3) {
+      const dRe = flat[at]! + uRe;
+      const dIm = flat[at + 1]! + uIm;
+      sum += flat[at + 2]! / (dRe * dRe + dIm * dIm);
+    }
     delay[point] = sum;
   }
 }

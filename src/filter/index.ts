@@ -30,6 +30,13 @@ export {
 } from './order.ts';
 export { allPairings, mirroredPairings, type Pairing, pairPoles, type SectionRoots } from './pairing.ts';
 export { findPeak, type Peak } from './peak.ts';
+export {
+  type Capacity,
+  type FamilyPlans,
+  type FilterPlan,
+  MAX_DESIGN_ORDER,
+  planFilters,
+} from './plan/index.ts';
 export { cascadeCostDb, passiveSection, toSections } from './sections.ts';
 export type * from './specification.ts';
 export type * from './transfer-function.ts';

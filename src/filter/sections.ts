@@ -9,7 +9,7 @@ const decibels = (transmission: number): number => 10 * Math.log10(transmission)
 /**
  * The sections of a pairing. Their product is the filter, gain and phase included; the gain is shared out so that
  * all sections have the same peak, and the phase of it is the first section's. Passive sections have no peak above
- * 0 dB: `cascadeCostDb` is what a cascade of them loses against the filter. O(order · 600) a section.
+ * 0 dB: `cascadeCostDb` is what a cascade of them loses against the filter. O(400) a section.
  */
 export function toSections(filter: TransferFunction, pairing: Pairing): FilterSection[] {
   const bare = pairing.map((roots) => ({
