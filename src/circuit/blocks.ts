@@ -26,7 +26,10 @@ export interface BlockRoutines {
     valueRe: number,
     valueIm: number,
   ): void;
-  /** arm ← arm·Π rings, `stride` numbers a ring (src/circuit/elements.ts); lossless rings only. */
+  /**
+   * arm ← arm·Π rings, all lossless. HEAP_RING numbers a ring, of which the denominator's four are used: its cosine part
+   * times cos(φ/2) and sin(φ/2), its sine part times the same.
+   */
   allPassRings(
     n: number,
     cos: number,
@@ -36,7 +39,7 @@ export interface BlockRoutines {
     re: number,
     im: number,
   ): void;
-  /** The same for rings with loss. */
+  /** The same for rings with loss: the first six of their constants (src/circuit/elements.ts). */
   lossyRings(n: number, cos: number, sin: number, rings: number, count: number, re: number, im: number): void;
   /**
    * Outputs of a cell from its arms (`arms`: re0, im0, re1, im1, a block apart) and the field at in1 (`from`: re, im, a
@@ -47,7 +50,7 @@ export interface BlockRoutines {
   combineSecond(n: number, arms: number, k: number, from: number, to: number): void;
 }
 
-/** Numbers a ring occupies in the heap: the first six of its constants. */
+/** Numbers a ring occupies in the heap. */
 export const HEAP_RING = 6;
 
 export function createPlainBlocks(): BlockRoutines {
@@ -95,17 +98,16 @@ function plainAllPass(
   im: number,
 ): void {
   const sign = count % 2 === 0 ? 1 : -1;
-  const end = rings + count * HEAP_RING;
+  const stride = HEAP_RING;
+  const end = rings + count * stride;
   for (let i = 0; i < n; i++) {
     const c = heap[cos + i]!;
     const s = heap[sin + i]!;
     let pRe = 1;
     let pIm = 0;
-    for (let r = rings; r < end; r += HEAP_RING) {
-      const ch = heap[r + 4]!;
-      const sh = heap[r + 5]!;
-      const bRe = heap[r + 2]! * (c * ch - s * sh);
-      const bIm = heap[r + 3]! * (s * ch + c * sh);
+    for (let r = rings; r < end; r += stride) {
+      const bRe = heap[r]! * c - heap[r + 1]! * s;
+      const bIm = heap[r + 2]! * s + heap[r + 3]! * c;
       const next = pRe * bRe - pIm * bIm;
       pIm = pRe * bIm + pIm * bRe;
       pRe = next;
@@ -132,7 +134,8 @@ function plainLossy(
   re: number,
   im: number,
 ): void {
-  const end = rings + count * HEAP_RING;
+  const stride = HEAP_RING;
+  const end = rings + count * stride;
   for (let i = 0; i < n; i++) {
     const c = heap[cos + i]!;
     const s = heap[sin + i]!;
@@ -140,7 +143,7 @@ function plainLossy(
     let pIm = 0;
     let aRe = heap[re + i]!;
     let aIm = heap[im + i]!;
-    for (let r = rings; r < end; r += HEAP_RING) {
+    for (let r = rings; r < end; r += stride) {
       const ch = heap[r + 4]!;
       const sh = heap[r + 5]!;
       const cd = c * ch - s * sh;
@@ -170,25 +173,26 @@ function plainCombine(
   from: number,
   to: number,
 ): void {
+  const block = BLOCK;
   const barBar = heap[k]!;
   const crossCross = heap[k + 1]!;
   const barCross = heap[k + 2]!;
   const crossBar = heap[k + 3]!;
   for (let i = 0; i < n; i++) {
     const a0Re = heap[arms + i]!;
-    const a0Im = heap[arms + BLOCK + i]!;
-    const a1Re = heap[arms + 2 * BLOCK + i]!;
-    const a1Im = heap[arms + 3 * BLOCK + i]!;
+    const a0Im = heap[arms + block + i]!;
+    const a1Re = heap[arms + 2 * block + i]!;
+    const a1Im = heap[arms + 3 * block + i]!;
     const bRe = barBar * a0Re - crossCross * a1Re;
     const bIm = barBar * a0Im - crossCross * a1Im;
     const cRe = barCross * a0Im + crossBar * a1Im;
     const cIm = -(barCross * a0Re + crossBar * a1Re);
     const fRe = from < 0 ? 1 : heap[from + i]!;
-    const fIm = from < 0 ? 0 : heap[from + BLOCK + i]!;
+    const fIm = from < 0 ? 0 : heap[from + block + i]!;
     heap[to + i] = bRe * fRe - bIm * fIm;
-    heap[to + BLOCK + i] = bRe * fIm + bIm * fRe;
-    heap[to + 2 * BLOCK + i] = cRe * fRe - cIm * fIm;
-    heap[to + 3 * BLOCK + i] = cRe * fIm + cIm * fRe;
+    heap[to + block + i] = bRe * fIm + bIm * fRe;
+    heap[to + 2 * block + i] = cRe * fRe - cIm * fIm;
+    heap[to + 3 * block + i] = cRe * fIm + cIm * fRe;
   }
 }
 
@@ -200,24 +204,25 @@ function plainCombineSecond(
   from: number,
   to: number,
 ): void {
+  const block = BLOCK;
   const barBar = heap[k]!;
   const crossCross = heap[k + 1]!;
   const barCross = heap[k + 2]!;
   const crossBar = heap[k + 3]!;
   for (let i = 0; i < n; i++) {
     const a0Re = heap[arms + i]!;
-    const a0Im = heap[arms + BLOCK + i]!;
-    const a1Re = heap[arms + 2 * BLOCK + i]!;
-    const a1Im = heap[arms + 3 * BLOCK + i]!;
+    const a0Im = heap[arms + block + i]!;
+    const a1Re = heap[arms + 2 * block + i]!;
+    const a1Im = heap[arms + 3 * block + i]!;
     const cRe = crossBar * a0Im + barCross * a1Im;
     const cIm = -(crossBar * a0Re + barCross * a1Re);
     const bRe = barBar * a1Re - crossCross * a0Re;
     const bIm = barBar * a1Im - crossCross * a0Im;
     const fRe = heap[from + i]!;
-    const fIm = heap[from + BLOCK + i]!;
+    const fIm = heap[from + block + i]!;
     heap[to + i]! += cRe * fRe - cIm * fIm;
-    heap[to + BLOCK + i]! += cRe * fIm + cIm * fRe;
-    heap[to + 2 * BLOCK + i]! += bRe * fRe - bIm * fIm;
-    heap[to + 3 * BLOCK + i]! += bRe * fIm + bIm * fRe;
+    heap[to + block + i]! += cRe * fIm + cIm * fRe;
+    heap[to + 2 * block + i]! += bRe * fRe - bIm * fIm;
+    heap[to + 3 * block + i]! += bRe * fIm + bIm * fRe;
   }
 }

@@ -32,6 +32,9 @@ export interface FieldBuffers {
   readonly out2Im: Float64Array;
 }
 
+/** Beyond this angle δ·Ω the vector sine would lose digits; nobody sweeps 160,000 free spectral ranges. */
+const MOST_ANGLE = 1e6;
+
 /** A compiled circuit. Not to be shared between threads; evaluations of different kernels may alternate freely. */
 export interface Kernel {
   /**
@@ -43,6 +46,8 @@ export interface Kernel {
   readonly plan: Plan;
   readonly workspace: PointWorkspace;
   readonly routines: BlockRoutines;
+  /** The heap's two sets of output fields: out1 re, im, out2 re, im. */
+  readonly views: readonly (readonly Float64Array[])[];
   readonly exact: Uint8Array;
 }
 
@@ -69,8 +74,13 @@ export function createKernel(circuit: CircuitParameters, routines: BlockRoutines
     plan,
     workspace: createPointWorkspace(),
     routines,
+    views: [HEAP.fieldsA, HEAP.fieldsB].map((at) => fieldViews(routines.heap, at)),
     exact: new Uint8Array(BLOCK),
   };
+}
+
+function fieldViews(heap: Float64Array, at: number): Float64Array[] {
+  return [0, 1, 2, 3].map((k) => heap.subarray(at + k * BLOCK, at + (k + 1) * BLOCK));
 }
 
 /** Takes over what was written to `kernel.parameters`. Allocates nothing. Throws as `createKernel`. */
@@ -118,37 +128,74 @@ function loadConstants({ plan, compiled, routines }: Kernel): void {
   for (let slot = 0; slot < slots; slot++) {
     const from = plan.ringOrder[slot]! * RING_STRIDE;
     const to = HEAP.rings + slot * HEAP_RING;
-    for (let k = 0; k < HEAP_RING; k++) heap[to + k] = compiled.ringConstants[from + k]!;
+    if (plan.slotKind[slot] === LOSSY) {
+      for (let k = 0; k < HEAP_RING; k++) heap[to + k] = compiled.ringConstants[from + k]!;
+      continue;
+    }
+    const cosPart = compiled.ringConstants[from + RING_CONSTANT.denominatorCos]!;
+    const sinPart = compiled.ringConstants[from + RING_CONSTANT.denominatorSin]!;
+    const cosHalf = compiled.ringConstants[from + RING_CONSTANT.cosHalfPhase]!;
+    const sinHalf = compiled.ringConstants[from + RING_CONSTANT.sinHalfPhase]!;
+    heap[to] = cosPart * cosHalf;
+    heap[to + 1] = cosPart * sinHalf;
+    heap[to + 2] = sinPart * cosHalf;
+    heap[to + 3] = sinPart * sinHalf;
   }
 }
 
 function evaluateBlock(kernel: Kernel, omegaRad: Float64Array, start: number, out: FieldBuffers): void {
   const { plan, compiled, routines } = kernel;
-  const { heap } = routines;
   const n = Math.min(BLOCK, omegaRad.length - start);
-  for (let i = 0; i < n; i++) heap[HEAP.omega + i] = omegaRad[start + i]!;
-  // whole vectors: the inner loops may run up to three frequencies over the end
+  const greatest = loadOmegas(routines.heap, omegaRad, start, n);
+  if (!(greatest * plan.longest <= MOST_ANGLE)) {
+    for (let i = start; i < start + n; i++) exactInto(kernel, omegaRad[i]!, out, i);
+    return;
+  }
   const padded = (n + 3) & ~3;
-  for (let i = n; i < padded; i++) heap[HEAP.omega + i] = heap[HEAP.omega + n - 1]!;
   for (let t = 0; t < plan.tableCount; t++) {
     const cos = HEAP.table + 2 * t * BLOCK;
     routines.halfAngles(padded, HEAP.omega, plan.tables[t]! / 2, cos, cos + BLOCK);
   }
-  let from: number = HEAP.fieldsA;
-  let to: number = HEAP.fieldsB;
+  let from = 0;
   for (let c = 0; c < compiled.cells.length; c++) {
-    evaluateCell(kernel, c, padded, from, to);
-    const kept = from;
-    from = to;
-    to = kept;
+    evaluateCell(
+      kernel,
+      c,
+      padded,
+      from === 0 ? HEAP.fieldsA : HEAP.fieldsB,
+      from === 0 ? HEAP.fieldsB : HEAP.fieldsA,
+    );
+    from = 1 - from;
   }
-  for (let i = 0; i < n; i++) {
-    out.out1Re[start + i] = heap[from + i]!;
-    out.out1Im[start + i] = heap[from + BLOCK + i]!;
-    out.out2Re[start + i] = heap[from + 2 * BLOCK + i]!;
-    out.out2Im[start + i] = heap[from + 3 * BLOCK + i]!;
-  }
+  storeFields(kernel.views[from]!, start, n, out);
   if (plan.narrowCount > 0) redoNearResonance(kernel, omegaRad, start, n, out);
+}
+
+/**
+ * Copies n frequencies to the front of the heap, filled up to whole vectors (the inner loops run up to three frequencies
+ * over the end). Returns the greatest |Ω|, or not a number if one is not.
+ */
+function loadOmegas(heap: Float64Array, omegaRad: Float64Array, start: number, n: number): number {
+  let greatest = 0;
+  for (let i = 0; i < n; i++) {
+    const omega = omegaRad[start + i]!;
+    heap[i] = omega;
+    greatest = Math.max(greatest, Math.abs(omega));
+  }
+  for (let i = n; i & 3; i++) heap[i] = heap[n - 1]!;
+  return greatest;
+}
+
+function storeFields(views: readonly Float64Array[], start: number, n: number, out: FieldBuffers): void {
+  storeField(out.out1Re, views[0]!, start, n);
+  storeField(out.out1Im, views[1]!, start, n);
+  storeField(out.out2Re, views[2]!, start, n);
+  storeField(out.out2Im, views[3]!, start, n);
+}
+
+function storeField(out: Float64Array, view: Float64Array, start: number, n: number): void {
+  if (n === view.length) out.set(view, start);
+  else for (let i = 0; i < n; i++) out[start + i] = view[i]!;
 }
 
 function evaluateCell(kernel: Kernel, c: number, n: number, from: number, to: number): void {
@@ -205,6 +252,8 @@ function redoNearResonance(
 ): void {
   const { plan, compiled, exact } = kernel;
   const { heap } = kernel.routines;
+  const { windowSin } = plan;
+  const block = BLOCK;
   exact.fill(0);
   for (let k = 0; k < plan.narrowCount; k++) {
     const slot = plan.narrow[k]!;
@@ -213,8 +262,8 @@ function redoNearResonance(
     const sh = compiled.ringConstants[at + RING_CONSTANT.sinHalfPhase]!;
     const cos = HEAP.table + 2 * plan.slotTable[slot]! * BLOCK;
     for (let i = 0; i < n; i++) {
-      const half = heap[cos + BLOCK + i]! * ch + heap[cos + i]! * sh;
-      if (half < plan.windowSin && half > -plan.windowSin) exact[i] = 1;
+      const half = heap[cos + block + i]! * ch + heap[cos + i]! * sh;
+      if (half < windowSin && half > -windowSin) exact[i] = 1;
     }
   }
   for (let i = 0; i < n; i++) if (exact[i] === 1) exactInto(kernel, omegaRad[start + i]!, out, start + i);

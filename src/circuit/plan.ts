@@ -32,6 +32,8 @@ export interface Plan {
   /** Different delays in unit delays, `tableCount` of them. */
   readonly tables: Float64Array;
   tableCount: number;
+  /** The longest of them. */
+  longest: number;
   /** Ring of every slot, `slots` of them: uncoupled rings have none, the rest stand arm by arm, equal kinds together. */
   readonly ringOrder: Int32Array;
   readonly slotKind: Uint8Array;
@@ -52,6 +54,7 @@ export function createPlan(compiled: Compiled): Plan {
   return {
     tables: new Float64Array(rings + arms),
     tableCount: 0,
+    longest: 0,
     ringOrder: new Int32Array(rings),
     slotKind: new Uint8Array(rings),
     slotTable: new Int32Array(rings),
@@ -66,6 +69,7 @@ export function createPlan(compiled: Compiled): Plan {
 function tableOf(plan: Plan, delay: number): number {
   for (let t = 0; t < plan.tableCount; t++) if (plan.tables[t] === delay) return t;
   plan.tables[plan.tableCount] = delay;
+  plan.longest = Math.max(plan.longest, delay);
   return plan.tableCount++;
 }
 
@@ -81,6 +85,7 @@ function placeRing(plan: Plan, compiled: Compiled, ring: number, slot: number): 
 /** Makes the plan anew, in place. */
 export function planInto(plan: Plan, compiled: Compiled): void {
   plan.tableCount = 0;
+  plan.longest = 0;
   plan.narrowCount = 0;
   let slot = 0;
   for (let c = 0; c < compiled.cells.length; c++) {
