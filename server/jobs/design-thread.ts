@@ -1,7 +1,7 @@
 /** Runs inside a worker thread: the question and the chip in, the design or the refusal out. */
 import { createHash } from 'node:crypto';
-import canonicalize from 'canonicalize';
 import { chipModelOf } from '../../schema/chip.ts';
+import { canonicalJson } from '../../schema/jcs.ts';
 import { computeDesign, type DesignQuestion } from '../../src/design/index.ts';
 import { Refusal } from '../../src/errors.ts';
 import type { ThreadAnswer, ThreadTask } from './answer.ts';
@@ -9,10 +9,9 @@ import type { ThreadAnswer, ThreadTask } from './answer.ts';
 /** Loading this file is all that warming takes: the thread has then compiled the core. */
 export function warm(): void {}
 
+/** Tells whether two machines computed the same digits. */
 function resultHashOf(design: unknown): string {
-  const text = canonicalize(design);
-  if (text === undefined) throw new TypeError('a design must be JSON');
-  return createHash('sha256').update(text, 'utf8').digest('hex');
+  return createHash('sha256').update(canonicalJson(design), 'utf8').digest('hex');
 }
 
 export function design({ canonical, model, port }: ThreadTask): ThreadAnswer {

@@ -123,7 +123,7 @@ export async function startWorker(options: WorkerOptions): Promise<Worker> {
     if (event.kind === 'CANCEL') computations.cancel(event.id);
     else if (event.kind === 'RECONNECTED') computations.recheck();
   });
-  /** Jobs that were aborted by the shutdown, with the attempts they had before. */
+  /** Jobs that were aborted by the shutdown, with the attempts they may take. */
   const aborted = new Map<string, number>();
   const stopQueue = await superviseQueue(options, async (payload, { job, abortSignal }) => {
     const { id } = jobRule.parse(payload);
@@ -131,7 +131,7 @@ export async function startWorker(options: WorkerOptions): Promise<Worker> {
     try {
       await computations.run(id, shutdown);
     } catch (error) {
-      if (shutdown.aborted) aborted.set(String(job.id), job.attempts - 1);
+      if (shutdown.aborted) aborted.set(String(job.id), job.max_attempts);
       throw error;
     }
   });
@@ -155,12 +155,16 @@ export async function startWorker(options: WorkerOptions): Promise<Worker> {
   };
 }
 
-/** An aborted run counts as a failed attempt and waits seconds for its next: neither is the computation's fault. */
+/**
+ * An aborted run counts as a failed attempt and waits seconds for its next: neither is the computation's fault. It gets
+ * one attempt more (the library cannot set the count of attempts back to 0).
+ */
 async function giveBack(store: Store, jobs: ReadonlyMap<string, number>, logger: Logger): Promise<void> {
   if (jobs.size === 0) return;
   const queue = await makeWorkerUtils({ pgPool: store.pool, logger: queueLogger(logger) });
   try {
-    for (const [id, attempts] of jobs) await queue.rescheduleJobs([id], { runAt: new Date(), attempts });
+    for (const [id, attempts] of jobs)
+      await queue.rescheduleJobs([id], { runAt: new Date(), maxAttempts: attempts + 1 });
     logger.info({ jobs: jobs.size }, 'gave running computations back to the queue');
   } catch (error) {
     logger.warn({ err: error }, 'running computations wait for their next attempt');
