@@ -77,8 +77,7 @@ function maskPath(parts: readonly string[], body: RequestDesignInput, frame: Fre
   if (list !== 'bands' || index === undefined || body.specification.mask === undefined) {
     return { path, unit: null, turn: asIs };
   }
-  const bands = sortedBands(body.specification.mask.bands, frame);
-  const asked = bands[Number(index)]?.askedIndex ?? Number(index);
+  const asked = askedBandIndex(Number(index), body, frame);
   const at = body.specification.mask.bands[asked]?.interval;
   const base = ['specification', 'mask', 'bands', String(asked)];
   if (rest.length === 0) {
@@ -135,26 +134,47 @@ function changeFor(change: NearestChange, body: RequestDesignInput, frame: Frequ
   };
 }
 
+function askedBandIndex(index: number, body: RequestDesignInput, frame: FrequencyFrame): number {
+  const { mask } = body.specification;
+  return mask === undefined ? index : (sortedBands(mask.bands, frame)[index]?.askedIndex ?? index);
+}
+
+/** The core counts bands in canonical order; what stands in quotes is a label and stays. */
+function inAskedBands(detail: string, body: RequestDesignInput, frame: FrequencyFrame): string {
+  return detail.replace(/"[^"]*"|\bband (\d+)/g, (all, index: string | undefined) =>
+    index === undefined ? all : `band ${askedBandIndex(Number(index), body, frame)}`,
+  );
+}
+
+/** `{bands: [i, j], commonOffsetGhz}`: two bands that meet, by their positions in the request. */
+function collisionIn(given: unknown, body: RequestDesignInput, frame: FrequencyFrame): unknown {
+  if (!isRecord(given) || !Array.isArray(given.bands)) return undefined;
+  return { ...given, bands: given.bands.map((index) => askedBandIndex(Number(index), body, frame)) };
+}
+
 /**
  * A problem of the core for whoever sent `body`. Suggestions become whole bodies; those that `accepts` refuses are
  * dropped. A problem that has no canonical pointers passes unchanged.
- * @param body what `requestDesignRule` accepted
+ * @param body what `requestDesignRule` accepted of `asked`
+ * @param asked the request as it was sent: what suggestions are made of
  */
 export function problemInAskedUnits(
   problem: Problem,
   body: RequestDesignInput,
+  asked: unknown,
   frame: FrequencyFrame,
   accepts: (input: unknown) => boolean,
 ): Problem {
-  const { pointer, given: _given, allowed, nearest, ...rest } = problem;
+  const { pointer, given: canonicalGiven, allowed, nearest, detail, ...others } = problem;
+  const rest = { ...others, detail: inAskedBands(detail, body, frame) };
   const offers = nearest.map(({ reason, changes }) => {
     const translated = changes.map((change) => changeFor(change, body, frame));
-    return { reason, changes: translated, input: withEdits(body, translated) };
+    return { reason, changes: translated, input: withEdits(asked, translated) };
   });
   const kept = offers.filter((offer) => accepts(offer.input));
   if (pointer === undefined) return { ...rest, ...(allowed === undefined ? {} : { allowed }), nearest: kept };
   const target = translate(pointer, body, frame);
-  const given = valueAt(body, target.path);
+  const given = collisionIn(canonicalGiven, body, frame) ?? valueAt(body, target.path);
   return {
     ...rest,
     pointer: pointerOf(target.path),

@@ -7,6 +7,7 @@ import type {
   Band,
   FamilySpecification,
   FilterSpecification,
+  IntervalGhz,
   MaskSpecification,
   SynthesisChoice,
 } from '../src/filter/specification.ts';
@@ -19,6 +20,7 @@ import type {
   FilterSpecificationInput,
   MaskSpecificationInput,
 } from './specification.ts';
+import type { IntervalInput } from './units.ts';
 
 /** Raised when the meaning of a canonical text changes. */
 const CANONICAL_SCHEMA = 1;
@@ -113,6 +115,31 @@ export function canonicalSpecification(
 ): FilterSpecification {
   if (input.family !== undefined) return { family: canonicalFamily(input.family, frame) };
   return { mask: canonicalMask(input.mask, frame) };
+}
+
+/** The canonical specification as a request in offsets: asking it again gives the same canonical text. */
+export function askedOfSpecification(specification: FilterSpecification): FilterSpecificationInput {
+  if (specification.family !== undefined) {
+    const { centreGhz, band, stopband, ...rest } = specification.family;
+    return {
+      family: present({
+        ...rest,
+        centre: { offsetGhz: centreGhz },
+        band: band && inOffsets(band),
+        stopband: stopband && inOffsets(stopband),
+      }),
+    };
+  }
+  const { bands, ...rest } = specification.mask;
+  return { mask: { ...rest, bands: bands.map(askedBand) } };
+}
+
+function inOffsets({ lowGhz, highGhz }: IntervalGhz): IntervalInput {
+  return { offsetGhz: { low: lowGhz, high: highGhz } };
+}
+
+function askedBand({ lowGhz, highGhz, ...rest }: Band): BandInput {
+  return { interval: inOffsets({ lowGhz, highGhz }), ...rest };
 }
 
 /** Canonical text of a question; its SHA-256 is the design's address. */

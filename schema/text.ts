@@ -42,7 +42,7 @@ export function textRule(max: number) {
 
 export const opaqueIdRule = z
   .string()
-  .regex(/^[a-z]{3}_[0-9a-z]{26,64}$/, { error: 'must be an id of this service' });
+  .regex(/^[a-z]{3}_[0-9a-z]{1,140}$/, { error: 'must be an id of this service' });
 
 export const dateTimeRule = z.iso.datetime({
   offset: true,
