@@ -4,6 +4,7 @@
  */
 import { availableParallelism } from 'node:os';
 import { z } from 'zod';
+import { LIMITS } from '../schema/limits.ts';
 
 const LOG_LEVELS = ['trace', 'debug', 'info', 'warn', 'error', 'fatal', 'silent'] as const;
 
@@ -98,6 +99,16 @@ const VARIABLES = {
     'Connections to PostgreSQL that one process keeps.',
     '20',
   ),
+  RINGBINDER_QUEUE_LIMIT: variable(
+    wholeNumber(1, 1_000_000),
+    'Computations that may wait at once; beyond it new requests get QUEUE_FULL.',
+    String(LIMITS.queuedRequests),
+  ),
+  RINGBINDER_RATE_PER_S: variable(
+    wholeNumber(1, 1_000_000),
+    'Requests a second that one token may make of one process; bursts up to twice as many.',
+    String(LIMITS.requestsPerSecond),
+  ),
   RINGBINDER_HEARTBEAT: variable(
     z.string().min(1, 'the path of a file'),
     'File that a worker touches every second while it reaches the queue; for health checks.',
@@ -122,6 +133,8 @@ export interface Config {
   readonly computationTimeoutS: number;
   readonly drainS: number;
   readonly poolSize: number;
+  readonly queueLimit: number;
+  readonly ratePerS: number;
   readonly heartbeatFile?: string;
   readonly trustProxy: boolean | readonly string[];
 }
@@ -186,6 +199,8 @@ export function readConfig(environment: Readonly<Record<string, string | undefin
     computationTimeoutS: read('RINGBINDER_COMPUTATION_TIMEOUT_S') as number,
     drainS: read('RINGBINDER_DRAIN_S') as number,
     poolSize: read('RINGBINDER_POOL_SIZE') as number,
+    queueLimit: read('RINGBINDER_QUEUE_LIMIT') as number,
+    ratePerS: read('RINGBINDER_RATE_PER_S') as number,
     ...(heartbeatFile === undefined ? {} : { heartbeatFile }),
     trustProxy: read('RINGBINDER_TRUST_PROXY') as boolean | readonly string[],
   };
