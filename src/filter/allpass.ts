@@ -24,16 +24,23 @@ export interface AllPassPair {
 }
 
 /**
- * Phase (rad) of Π (z⁻¹ − p*)/(1 − p·z⁻¹) at Ω. Every factor is e^{−jΩ}·v*‍/v with v = 1 − p·e^{−jΩ}, of modulus 1
- * whatever its rounding, and arg v = arg(e^{jΩ} − p) − Ω.
+ * Phase (rad, not wrapped) of Π (z⁻¹ − p*)/(1 − p·z⁻¹) at Ω. A factor is e^{jΩ}·v* / v with v = e^{jΩ} − p, of modulus
+ * 1 whatever its rounding, so the arm's phase is order·Ω − 2·arg Πv.
  */
 function armPhase(poles: readonly Complex[], omegaRad: number): number {
   const half = Math.sin(omegaRad / 2);
   const uRe = -2 * half * half;
   const uIm = 2 * half * Math.cos(omegaRad / 2);
-  let phase = 0;
-  for (const pole of poles) phase += omegaRad - 2 * Math.atan2(uIm - pole.im, 1 - pole.re + uRe);
-  return phase;
+  let re = 1;
+  let im = 0;
+  for (const pole of poles) {
+    const vRe = 1 - pole.re + uRe;
+    const vIm = uIm - pole.im;
+    const next = re * vRe - im * vIm;
+    im = re * vIm + im * vRe;
+    re = next;
+  }
+  return poles.length * omegaRad - 2 * Math.atan2(im, re);
 }
 
 const phasor = (phaseRad: number): Complex => new Complex(Math.cos(phaseRad), Math.sin(phaseRad));

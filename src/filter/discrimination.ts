@@ -26,7 +26,8 @@ const modulusFromExcess = (x: number): Modulus => ({
 });
 
 /** 1/k − 1 = k'²/(k·(1 + k)). */
-const excessOfModulus = ({ k, complement }: Modulus): number => (complement * complement) / (k * (1 + k));
+export const excessOfModulus = ({ k, complement }: Modulus): number =>
+  (complement * complement) / (k * (1 + k));
 
 /** D − 1 of an order at a selectivity excess s − 1. */
 export function discriminationExcess(family: Family, order: number, selectivityExcess: number): number {
@@ -58,3 +59,10 @@ export function orderBetween(
   }
   return acoshFromExcess(discriminationExcess) / acoshFromExcess(selectivityExcess);
 }
+
+/** An order that exceeds a whole number by less than this, relative, does so by the rounding of the demand. */
+const ORDER_SLACK = 1e-9;
+
+/** The least whole order that is enough. */
+export const wholeOrder = (exactOrder: number): number =>
+  Math.max(1, Math.ceil(exactOrder * (1 - ORDER_SLACK)));

@@ -24,6 +24,18 @@ export function guardOrder(order: number): void {
   );
 }
 
+/** A demand that needs an order beyond what is designed. */
+export function guardReach(order: number, demand: unknown): void {
+  if (order <= MAX_ORDER) return;
+  throw new Refusal({
+    code: 'SPECIFICATION_UNREACHABLE',
+    detail: `This needs order ${order}; designs go up to order ${MAX_ORDER}.`,
+    given: demand,
+    allowed: { maxOrder: MAX_ORDER },
+    limit: 'ORDER',
+  });
+}
+
 /** `edgeRad` in the open interval (0, π). */
 export function guardEdge(edgeRad: number): void {
   if (edgeRad > 0 && edgeRad < Math.PI) return;

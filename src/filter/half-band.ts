@@ -3,7 +3,7 @@
  * circuit are the same channel filter half an FSR apart. Odd order; Butterworth, or the elliptic filter matched so that
  * the two ripples satisfy ε_p·ε_s = 1, ripple = −10·log₁₀(1 − 10^(−A/10)) for an isolation A.
  *
- * Sources: P. P. Vaidyanathan, "Multirate Systems and Filter Banks", Prentice Hall 1993, section 5.3; L. Gazsi,
+ * Sources: P. P. Vaidyanathan, "Multirate Systems and Filter Banks", Prentice Hall 1993, chapter 5; L. Gazsi,
  * "Explicit formulas for lattice wave digital filters", IEEE Trans. CAS 32, 68 (1985).
  *
  * With the edges' geometric mean at 1 the poles lie on |s| = 1, s = e^{jθ}, and go to z = j·cot(θ/2): exactly on the
@@ -13,6 +13,7 @@ import { Complex } from 'complex.js';
 import { Refusal } from '../errors.ts';
 import { scaleEdge } from './bands.ts';
 import { bilinear, prewarp, unwarp } from './bilinear.ts';
+import { wholeOrder } from './discrimination.ts';
 import {
   discriminationModulus,
   inverseSnImaginary,
@@ -21,7 +22,7 @@ import {
   selectivityModulus,
 } from './elliptic.ts';
 import { type AnalogFilter, analogPrototype, ellipticOfModulus } from './families.ts';
-import { guardEdge, guardOrder, guardRejection, MAX_ORDER } from './guards.ts';
+import { guardEdge, guardOrder, guardReach, guardRejection, MAX_ORDER } from './guards.ts';
 import { attenuationDb, rippleFactor } from './ripple-factor.ts';
 import type { LabelledFilter } from './transfer-function.ts';
 
@@ -108,15 +109,10 @@ export function leastHalfBandOrder(
     family === 'BUTTERWORTH'
       ? Math.log(rippleFactor(demand.isolationDb)) / Math.log(prewarp(demand.stopEdgeRad))
       : logNome(discrimination) / logNome(selectivityOfStopEdge(demand.stopEdgeRad));
-  const order = 2 * Math.ceil((Math.max(1, exact) * (1 - 1e-9) - 1) / 2) + 1;
-  if (order <= MAX_ORDER) return order;
-  throw new Refusal({
-    code: 'SPECIFICATION_UNREACHABLE',
-    detail: `This half-band filter needs order ${order}; designs go up to order ${MAX_ORDER}.`,
-    given: demand,
-    allowed: { maxOrder: MAX_ORDER },
-    limit: 'ORDER',
-  });
+  const least = wholeOrder(exact);
+  const order = least % 2 === 1 ? least : least + 1;
+  guardReach(order, demand);
+  return order;
 }
 
 function ellipticModuli(ask: HalfBandAsk): { discrimination: Modulus; selectivity: Modulus } {

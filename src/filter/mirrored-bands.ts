@@ -4,7 +4,7 @@
  * instead (`rotateFilter`); these are for the two bands that lie symmetrically about the reference frequency.
  *
  * Lowpass-to-bandpass s → (s² + w₀²)/(B·s), w₀² = w₁w₂, B = w₂ − w₁, and its inverse for the band-stop (Parks and
- * Burrus 1987, section 7.4). The map keeps the imaginary axis, so an all-pass arm stays one: both poles that come from
+ * Burrus 1987, chapter 7). The map keeps the imaginary axis, so an all-pass arm stays one: both poles that come from
  * a pole inherit its label.
  */
 import { Complex } from 'complex.js';

@@ -5,8 +5,15 @@
  */
 import { Refusal } from '../errors.ts';
 import { prewarp, unwarp } from './bilinear.ts';
-import { discriminationExcess, orderBetween, selectivityExcess } from './discrimination.ts';
-import { guardContrast, guardEdge, guardOrder, guardRejection, guardRipple, MAX_ORDER } from './guards.ts';
+import {
+  discriminationExcess,
+  excessOfModulus,
+  orderBetween,
+  selectivityExcess,
+  wholeOrder,
+} from './discrimination.ts';
+import { discriminationOf } from './families.ts';
+import { guardContrast, guardEdge, guardOrder, guardReach, guardRejection, guardRipple } from './guards.ts';
 import { attenuationDb, rippleFactor } from './ripple-factor.ts';
 import type { Family } from './specification.ts';
 
@@ -24,48 +31,40 @@ export interface LeastOrder {
   readonly exactOrder: number;
 }
 
-/** An order that misses a whole number by less than this, relative, is rounding of the demand and not a need. */
-const ORDER_SLACK = 1e-9;
+function guardEdges(passEdgeRad: number, stopEdgeRad: number): void {
+  guardEdge(passEdgeRad);
+  guardEdge(stopEdgeRad);
+  if (passEdgeRad < stopEdgeRad) return;
+  throw new Refusal({
+    code: 'SPECIFICATION_INVALID',
+    detail: 'The passband must end before the stopband begins.',
+    given: [passEdgeRad, stopEdgeRad],
+  });
+}
 
 /** w_stop/w_pass − 1 = sin((Ω_s − Ω_p)/2) / (cos(Ω_s/2)·sin(Ω_p/2)). */
 function edgeExcess(passEdgeRad: number, stopEdgeRad: number): number {
-  guardEdge(passEdgeRad);
-  guardEdge(stopEdgeRad);
-  if (passEdgeRad >= stopEdgeRad) {
-    throw new Refusal({
-      code: 'SPECIFICATION_INVALID',
-      detail: 'The passband must end before the stopband begins.',
-      given: [passEdgeRad, stopEdgeRad],
-    });
-  }
+  guardEdges(passEdgeRad, stopEdgeRad);
   const gap = Math.sin((stopEdgeRad - passEdgeRad) / 2);
   return gap / (Math.cos(stopEdgeRad / 2) * Math.sin(passEdgeRad / 2));
 }
 
-/** ε_stop/ε_pass − 1, from ε_s² − ε_p² = 10^(r/10)·(10^((A−r)/10) − 1). */
+/** ε_stop/ε_pass − 1. */
 function contrastExcess(rippleDb: number, rejectionDb: number): number {
   guardRipple(rippleDb);
   guardRejection(rejectionDb);
   guardContrast(rippleDb, rejectionDb);
-  const pass = rippleFactor(rippleDb);
-  const gap = 10 ** (rippleDb / 20) * rippleFactor(rejectionDb - rippleDb);
-  return (gap / pass) ** 2 / (1 + rippleFactor(rejectionDb) / pass);
+  return excessOfModulus(discriminationOf(rippleDb, rejectionDb));
 }
 
-/** The least order of a family that meets a demand. Refused beyond {@link MAX_ORDER}. O(1). */
+/** The least order of a family that meets a demand. Refused beyond the greatest order that is designed. O(1). */
 export function leastOrder(family: Family, demand: LowPassDemand): LeastOrder {
   const edges = edgeExcess(demand.passEdgeRad, demand.stopEdgeRad);
   const contrast = contrastExcess(demand.rippleDb, demand.rejectionDb);
   const exactOrder = orderBetween(family, edges, contrast);
-  const order = Math.max(1, Math.ceil(exactOrder * (1 - ORDER_SLACK)));
-  if (order <= MAX_ORDER) return { order, exactOrder };
-  throw new Refusal({
-    code: 'SPECIFICATION_UNREACHABLE',
-    detail: `This needs order ${order}; designs go up to order ${MAX_ORDER}.`,
-    given: demand,
-    allowed: { maxOrder: MAX_ORDER },
-    limit: 'ORDER',
-  });
+  const order = wholeOrder(exactOrder);
+  guardReach(order, demand);
+  return { order, exactOrder };
 }
 
 /** The greatest rejection, dB, that an order reaches from `stopEdgeRad` on with this ripple up to `passEdgeRad`. */
@@ -139,6 +138,8 @@ export interface DesignEdges {
  * Chebyshev I and elliptic are designed with the demand's ripple, Chebyshev II and elliptic with its rejection.
  */
 export function designEdges(family: Family, order: number, demand: LowPassDemand): DesignEdges {
+  guardOrder(order);
+  guardEdges(demand.passEdgeRad, demand.stopEdgeRad);
   const pass = prewarp(demand.passEdgeRad);
   const stop = prewarp(demand.stopEdgeRad);
   const needed = selectivityExcess(family, order, contrastExcess(demand.rippleDb, demand.rejectionDb));

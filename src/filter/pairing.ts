@@ -3,8 +3,8 @@
  *
  * A pair is two roots that are mirror images about the filter's centre (conjugates, before rotation); roots that are
  * their own mirror image are joined two by two, and an odd one stands alone in a first-order section. The heuristic,
- * poles nearest to the unit circle first, each with the nearest zeros: L. B. Jackson, "Digital Filters and Signal
- * Processing", 3rd ed., Kluwer 1996, section 11.4 (pairing for small peak gains).
+ * poles nearest to the unit circle first, each with the nearest zeros: L. B. Jackson, "Roundoff-noise analysis for
+ * fixed-point digital filters realized in cascade or parallel form", IEEE Trans. Audio Electroacoust. 18, 107 (1970).
  */
 import type { Complex } from 'complex.js';
 import type { TransferFunction } from './transfer-function.ts';

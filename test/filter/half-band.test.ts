@@ -79,7 +79,7 @@ describe('half-band filters', () => {
   });
 
   it.each([3, 5, 7])('Butterworth of order %i has poles ±j·tan(kπ/2N) [published]', (order) => {
-    // Gazsi 1985; Vaidyanathan 1993, section 5.3
+    // Gazsi 1985; Vaidyanathan 1993, chapter 5
     const found = coefficientsOf(designHalfBand({ family: 'BUTTERWORTH', order }).poles);
     const expected = [reference.butterworth.doubleLengthRing[`N${order}`]!].flat();
     expect(found.length).toBe(expected.length);
