@@ -48,27 +48,40 @@ function resonances(circuit: CircuitParameters): Float64Array {
 describe('kernel and solver', () => {
   it('agree to 1e-12 on lossless circuits of unit delays with K ≥ 1e-4 [cross-check] [property]', () => {
     fc.assert(
-      fc.property(randomCircuits({ leastCoupling: 1e-4, lossy: false, delays: 'UNIT' }), randomOmegas(), (circuit, omega) => {
-        expect(worstDisagreement(circuit, omega)).toBeLessThan(AGREEMENT);
-      }),
+      fc.property(
+        randomCircuits({ leastCoupling: 1e-4, lossy: false, delays: 'UNIT' }),
+        randomOmegas(),
+        (circuit, omega) => {
+          expect(worstDisagreement(circuit, omega)).toBeLessThan(AGREEMENT);
+        },
+      ),
       { numRuns: 150 },
     );
   });
 
   it('agree to 1e-12 with losses and delays of any length [cross-check] [property]', () => {
     fc.assert(
-      fc.property(randomCircuits({ leastCoupling: 1e-4, lossy: true, delays: 'ANY' }), randomOmegas(), (circuit, omega) => {
-        expect(worstDisagreement(circuit, omega)).toBeLessThan(AGREEMENT);
-      }),
+      fc.property(
+        randomCircuits({ leastCoupling: 1e-4, lossy: true, delays: 'ANY' }),
+        randomOmegas(),
+        (circuit, omega) => {
+          expect(worstDisagreement(circuit, omega)).toBeLessThan(AGREEMENT);
+        },
+      ),
       { numRuns: 150 },
     );
   });
 
   it('agree on and beside every resonance within the amplified rounding [cross-check] [property]', () => {
     fc.assert(
-      fc.property(randomCircuits({ leastCoupling: 1e-6, lossy: true, delays: 'ANY', mostRings: 4 }), (circuit) => {
-        expect(worstDisagreement(circuit, resonances(circuit))).toBeLessThan(AGREEMENT + amplified(circuit));
-      }),
+      fc.property(
+        randomCircuits({ leastCoupling: 1e-6, lossy: true, delays: 'ANY', mostRings: 4 }),
+        (circuit) => {
+          expect(worstDisagreement(circuit, resonances(circuit))).toBeLessThan(
+            AGREEMENT + amplified(circuit),
+          );
+        },
+      ),
       { numRuns: 100 },
     );
   });
@@ -76,19 +89,28 @@ describe('kernel and solver', () => {
   it('an updated kernel computes what a new one does [property]', () => {
     const circuits = randomCircuits({ leastCoupling: 1e-3, lossy: true, delays: 'ANY' });
     fc.assert(
-      fc.property(circuits, randomOmegas(), fc.double({ min: 0.1, max: 0.9, noNaN: true }), (circuit, omega, share) => {
-        const other: CircuitParameters = {
-          join: circuit.join,
-          cells: circuit.cells.map((cell) => ({ ...cell, inputCoupling: share, couplerExcessLossDb: share })),
-        };
-        const kernel = createKernel(circuit);
-        const updated = createFieldBuffers(omega.length);
-        const fresh = createFieldBuffers(omega.length);
-        updateKernel(kernel, other);
-        evaluateInto(kernel, omega, updated);
-        evaluateInto(createKernel(other), omega, fresh);
-        expect(updated).toEqual(fresh);
-      }),
+      fc.property(
+        circuits,
+        randomOmegas(),
+        fc.double({ min: 0.1, max: 0.9, noNaN: true }),
+        (circuit, omega, share) => {
+          const other: CircuitParameters = {
+            join: circuit.join,
+            cells: circuit.cells.map((cell) => ({
+              ...cell,
+              inputCoupling: share,
+              couplerExcessLossDb: share,
+            })),
+          };
+          const kernel = createKernel(circuit);
+          const updated = createFieldBuffers(omega.length);
+          const fresh = createFieldBuffers(omega.length);
+          updateKernel(kernel, other);
+          evaluateInto(kernel, omega, updated);
+          evaluateInto(createKernel(other), omega, fresh);
+          expect(updated).toEqual(fresh);
+        },
+      ),
       { numRuns: 50 },
     );
   });

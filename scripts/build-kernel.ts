@@ -13,7 +13,7 @@ const target = join(root, 'src/circuit/wasm/binary.generated.ts');
 /** Lines of base64 in the generated file. */
 const WIDTH = 96;
 
-export async function buildKernel() {
+export async function buildKernel(): Promise<Buffer> {
   const folder = await mkdtemp(join(tmpdir(), 'kernel-'));
   try {
     const file = join(folder, 'kernel.wasm');
@@ -30,8 +30,9 @@ export async function buildKernel() {
   }
 }
 
-export function asModule(binary) {
-  const lines = binary.toString('base64').match(new RegExp(`.{1,${WIDTH}}`, 'g'));
+/** The generated file's text. */
+export function asModule(binary: Buffer): string {
+  const lines = binary.toString('base64').match(new RegExp(`.{1,${WIDTH}}`, 'g')) ?? [];
   const text = lines.map((line) => `  '${line}',`).join('\n');
   return `/** Made by \`npm run build:kernel\` from assembly/blocks.ts. */\nexport const KERNEL_BASE64 = [\n${text}\n].join('');\n`;
 }
