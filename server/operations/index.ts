@@ -1,2 +1,4 @@
 /** What the service does, for both doors. */
+export type { OperationsDeps } from './context.ts';
+export { designId, historyId, releaseId, wireId } from './ids.ts';
 export type * from './operations.ts';
