@@ -18,7 +18,7 @@ export interface Modulus {
 }
 
 /** The modulus with k and k' exchanged. */
-export const complementary = ({ k, complement }: Modulus): Modulus => ({ k: complement, complement: k });
+const complementary = ({ k, complement }: Modulus): Modulus => ({ k: complement, complement: k });
 
 /** The AGM converges quadratically; from a ratio of 1e-300 it takes 13 steps, then one a doubling of digits. */
 const AGM_STEPS = 40;

@@ -7,8 +7,8 @@ import type { PrototypeAsk } from './families.ts';
 export const MAX_ORDER = 32;
 
 /** Below this a ripple's factor, above this a rejection's factor, leaves the range in which the formulas were checked. */
-export const MIN_RIPPLE_DB = 1e-9;
-export const MAX_REJECTION_DB = 300;
+const MIN_RIPPLE_DB = 1e-9;
+const MAX_REJECTION_DB = 300;
 
 function refuse(detail: string, given: unknown, allowed: unknown, limit?: LimitKind): never {
   throw new Refusal({ code: 'SPECIFICATION_INVALID', detail, given, allowed, ...(limit ? { limit } : {}) });

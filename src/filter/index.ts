@@ -4,22 +4,19 @@ export { type AllPassPair, decompose } from './allpass.ts';
 export { type BandAsk, designHighPass, designLowPass, rotateFilter } from './bands.ts';
 export { complementOf, complementOfHalfBand } from './complement.ts';
 export { evaluateInto, groupDelayInto, transmissionAt } from './evaluate.ts';
-export { type AnalogFilter, type AnalogPrototype, analogPrototype, type PrototypeAsk } from './families.ts';
+export { analogPrototype, type PrototypeAsk } from './families.ts';
 export { MAX_ORDER } from './guards.ts';
 export {
   designHalfBand,
-  type HalfBandAsk,
   type HalfBandFamily,
   halfBandIsolationDb,
   halfBandStopEdgeRad,
   leastHalfBandOrder,
 } from './half-band.ts';
-export { designMirroredBandPass, designMirroredBandStop, type MirroredBandAsk } from './mirrored-bands.ts';
+export { designMirroredBandPass, designMirroredBandStop } from './mirrored-bands.ts';
 export {
   butterworthEdgeRad,
-  type DesignEdges,
   designEdges,
-  type LeastOrder,
   type LowPassDemand,
   leastOrder,
   naturalStopEdgeRad,
@@ -28,8 +25,8 @@ export {
   reachableRippleDb,
   reachableStopEdgeRad,
 } from './order.ts';
-export { allPairings, mirroredPairings, type Pairing, pairPoles, type SectionRoots } from './pairing.ts';
-export { findPeak, type Peak } from './peak.ts';
+export { allPairings, mirroredPairings, type Pairing, pairPoles } from './pairing.ts';
+export { findPeak } from './peak.ts';
 export {
   type Capacity,
   type FamilyPlans,

@@ -10,7 +10,7 @@ import type { Complex } from 'complex.js';
 import type { TransferFunction } from './transfer-function.ts';
 
 /** Positions of a section's poles and zeros in the filter's lists; one or two of each, equally many. */
-export interface SectionRoots {
+interface SectionRoots {
   readonly poles: readonly number[];
   readonly zeros: readonly number[];
 }
