@@ -1,3 +1,20 @@
 /** From a transfer function to circuits: the all-pass pair and the cascade of sections. */
 export { type RealisedPair, synthesiseAllPassPair } from './all-pass-pair.ts';
 export { type CellLosses, refuseUndercoupled, withLosses } from './interferometer.ts';
+export { sectionOf } from './section.ts';
+export {
+  type CascadeCell,
+  circuitOfCascade,
+  productOf,
+  type SectionCascade,
+  sectionCount,
+  synthesiseSectionCascade,
+} from './section-cascade.ts';
+export type { CascadeGoal, OmegaBand, OmegaMask } from './mask-problem.ts';
+export {
+  CASCADE_DEFAULTS,
+  type CascadeOptions,
+  type OptimisedCascade,
+  optimiseCascade,
+  refineCascade,
+} from './optimise-cascade.ts';

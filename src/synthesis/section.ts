@@ -147,16 +147,15 @@ export function sectionOf(
 }
 
 /**
- * The other zero of a lossless two-pole cell with a null at `zero` on its circle, and |b₀|/2, the size of its gain.
- * Null where that zero is at infinity.
+ * Of the lossless cell with a null at `zero` on the circle: the size of its leading coefficient, and the other zero of a
+ * two-pole cell (null for one pole, or where it is at infinity).
  */
-export function companionZero(
-  poles: readonly [Complex, Complex],
+export function cellOfNull(
+  poles: readonly Complex[],
   zero: Complex,
-): { zero: Complex; gain: number } | null {
-  const cell = cellWithNull(poles, zero, 'OUT2');
-  const { b } = numeratorOf(cell, 'OUT2');
+): { gain: number; otherZero: Complex | null } {
+  const { b } = numeratorOf(cellWithNull(poles, zero, 'OUT2'), 'OUT2');
   const gain = b[0]!.abs();
-  if (gain <= VANISHES) return null;
-  return { zero: b[2]!.div(b[0]!.mul(zero)), gain };
+  const last = b[2];
+  return { gain, otherZero: last === undefined || gain <= VANISHES ? null : last.div(b[0]!.mul(zero)) };
 }

@@ -1,0 +1,9 @@
+/** Minimisers, each a published method with its source. */
+export {
+  type MinimaxOptions,
+  type MinimaxProblem,
+  type MinimaxResult,
+  type MinimaxStop,
+  minimiseMaximum,
+} from './minimax.ts';
+export { type QuadraticProgramme, type QuadraticSolution, solveQuadraticProgramme } from './quadratic-programme.ts';
