@@ -9,9 +9,10 @@
  */
 import type { InterferometerParameters } from '../circuit/circuit.ts';
 import { Refusal } from '../errors.ts';
+import { REACH_SLACK } from './arms.ts';
 import { type CouplerState, couplerAt, thetaForCoupling } from './coupler.ts';
 import { type ChipElement, couplerOf, listElements } from './elements.ts';
-import type { ChipModel } from './model.ts';
+import type { ChipModel, Coupler } from './model.ts';
 import type { PlacedCircuit } from './placed.ts';
 
 /** K below which a coupler is two guides (field 1e-10), and 1 − K below which it crosses them: rounding of K itself. */
@@ -80,6 +81,20 @@ function refuseUndriven(path: string, given: number, rests: number): never {
   });
 }
 
+/** A circuit that was changed after it was placed may have left a coupler's reach. */
+function refuseBeyondReach(path: string, coupler: Coupler, powerCrossCoupling: number): void {
+  const { minCoupling: min, maxCoupling: max } = coupler;
+  if (powerCrossCoupling >= min - REACH_SLACK && powerCrossCoupling <= max + REACH_SLACK) return;
+  throw new Refusal({
+    code: 'SETTING_UNREACHABLE',
+    limit: 'COUPLING_RANGE',
+    detail: `${path} would have to be ${powerCrossCoupling.toPrecision(6)}; it reaches ${min} to ${max}.`,
+    element: path,
+    given: powerCrossCoupling,
+    allowed: { min, max },
+  });
+}
+
 /** Where the walk along the light stands. */
 interface Walk {
   readonly chip: ChipModel;
@@ -104,6 +119,7 @@ function placeCoupler(walk: Walk, cell: number, name: string, powerCrossCoupling
     if (coupler.tunable) walk.undriven.push(path);
     return { element, branch: -1, thetaRad: [0, 0], states: [state, state], powerCrossCoupling };
   }
+  refuseBeyondReach(path, coupler, powerCrossCoupling);
   const thetaRad = thetaForCoupling(coupler, powerCrossCoupling);
   const single = thetaRad[0] === 0 || thetaRad[0] === Math.PI;
   const branch = single ? -1 : walk.branches++;
