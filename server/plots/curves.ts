@@ -1,7 +1,7 @@
 /** The curves of a plot: what the plotter takes, how it thins them and how it tells them apart. */
 import { NM_THZ } from '../../src/conventions.ts';
-import type { OutputPort } from '../../src/filter/specification.ts';
-import type { Stage } from '../../src/response/response.ts';
+import type { OutputPort } from '../../src/filter/index.ts';
+import type { Stage } from '../../src/response/index.ts';
 import { COLOURS, PLOT_WIDTH } from './look.ts';
 
 /** One curve: `values` belongs to the plot's `offsetGhz`; null and NaN leave a gap. */

@@ -1,5 +1,5 @@
 /** A mask as shaded ground a curve must not enter, in the frame of one plot. */
-import type { MaskSpecification, OutputPort } from '../../src/filter/specification.ts';
+import type { MaskSpecification, OutputPort } from '../../src/filter/index.ts';
 import { colourOf, outputWords } from './curves.ts';
 
 export interface Frame {

@@ -1,5 +1,5 @@
 /** Transmission against frequency, with the mask it is judged by. */
-import type { MaskSpecification, OutputPort } from '../../src/filter/specification.ts';
+import type { MaskSpecification, OutputPort } from '../../src/filter/index.ts';
 import { curveName, curveScales, frequencyAxisTitle, pointsOf, type SpectrumPlot } from './curves.ts';
 import { COLOURS, LOOK, PLOT_HEIGHT, PLOT_WIDTH } from './look.ts';
 import { type ForbiddenGround, type Frame, forbiddenGround, type WordsPlace } from './mask.ts';

@@ -1,0 +1,64 @@
+/** What the entry points share: read the environment, start, tell the terminal, end well. */
+import type { Logger } from 'pino';
+import { type Config, ConfigurationError, readConfig, unknownVariables } from './config.ts';
+import { createLogger } from './logger.ts';
+import { type Parts, type RunningProcess, startProcess } from './process.ts';
+
+/** Beyond the time that jobs get, for connections and the database. After it the process ends as it is. */
+const STOP_MARGIN_MS = 15_000;
+/** sysexits.h: configuration error. */
+const EXIT_CONFIGURATION = 78;
+const EXIT_INTERRUPTED = 130;
+
+/** For people, so not through the logger; and secrets may stand here, once. */
+function tellTerminal({ url, dataFolder, firstAdminToken }: RunningProcess): void {
+  const lines: string[] = [];
+  if (url !== null) {
+    lines.push(`REST     ${url}/v1       described at ${url}/docs`);
+    lines.push(`GraphQL  ${url}/graphql`);
+  }
+  if (dataFolder !== null) lines.push(`Data     ${dataFolder}`);
+  if (firstAdminToken !== null)
+    lines.push('', 'First admin token, shown this once; keep it:', `  ${firstAdminToken}`);
+  if (lines.length > 0) process.stdout.write(`\n${lines.join('\n')}\n\n`);
+}
+
+function endOnSignals(running: RunningProcess, config: Config, logger: Logger): void {
+  let ending = false;
+  const end = (signal: NodeJS.Signals): void => {
+    if (ending) process.exit(EXIT_INTERRUPTED);
+    ending = true;
+    logger.info({ signal }, 'ending: connections drain, computations finish or go back to the queue');
+    setTimeout(
+      () => {
+        logger.error({}, 'did not end in time');
+        process.exit(1);
+      },
+      config.drainS * 1000 + STOP_MARGIN_MS,
+    ).unref();
+    running.stop().then(
+      () => process.exit(0),
+      () => process.exit(1),
+    );
+  };
+  process.on('SIGTERM', end);
+  process.on('SIGINT', end);
+}
+
+/** Runs until a signal ends it: SIGTERM or SIGINT once ends cleanly, twice at once. */
+export async function runProcess(parts: Parts): Promise<void> {
+  try {
+    const config = readConfig(process.env);
+    const logger = createLogger(config.logLevel);
+    for (const name of unknownVariables(process.env))
+      logger.warn({ variable: name }, 'not a variable of this service: misspelt?');
+    const running = await startProcess(config, parts, logger);
+    endOnSignals(running, config, logger);
+    tellTerminal(running);
+  } catch (error) {
+    const isConfiguration = error instanceof ConfigurationError;
+    if (isConfiguration) process.stderr.write(`${error.message}\n`);
+    else createLogger('error').fatal({ err: error }, 'could not start');
+    process.exit(isConfiguration ? EXIT_CONFIGURATION : 1);
+  }
+}
