@@ -10,6 +10,6 @@ export {
   type TagList,
 } from './conditional.ts';
 export { readIdempotencyKey } from './idempotency-key.ts';
-export { escapePointerToken, JsonRefused, readJson } from './json-text.ts';
-export { appliedWait, LONGEST_WAIT_S, preferredWait } from './prefer.ts';
+export { JsonRefused, readJson } from './json-text.ts';
+export { appliedWait, preferredWait } from './prefer.ts';
 export { createTokenBuckets, type TokenBuckets } from './token-bucket.ts';

@@ -3,6 +3,7 @@
  * beyond double range, a repeated member, a lone surrogate, a NUL character and member names that reach a prototype are
  * refused, each with its place.
  */
+import { pointerOf } from '../../../schema/pointer.ts';
 
 /** Deepest nesting accepted: our deepest body has 8 levels, and recursion must not reach the end of the stack. */
 const DEEPEST = 64;
@@ -56,15 +57,11 @@ export function readJson(text: string): unknown {
   return value;
 }
 
-export const escapePointerToken = (token: string | number): string =>
-  String(token).replaceAll('~', '~0').replaceAll('/', '~1');
-
 function refuse(reader: Reader, reason: string, offset = reader.at): never {
   const before = reader.text.slice(0, offset);
   const line = before.split('\n').length;
   const column = offset - before.lastIndexOf('\n');
-  const pointer = reader.path.map((token) => `/${escapePointerToken(token)}`).join('');
-  throw new JsonRefused(reason, pointer, offset, line, column);
+  throw new JsonRefused(reason, pointerOf(reader.path), offset, line, column);
 }
 
 function show(text: string, at: number): string {

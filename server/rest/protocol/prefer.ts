@@ -1,7 +1,9 @@
 /** `Prefer: wait=N`, RFC 7240 sections 2 (syntax, first of a name wins, unknown preferences are ignored) and 4.3. */
 
+import { LIMITS } from '../../../schema/limits.ts';
+
 /** Longest wait granted, s: below the idle limits of ordinary proxies. A longer wish is clamped, and the clamp said. */
-export const LONGEST_WAIT_S = 60;
+const LONGEST_WAIT_S = LIMITS.waitSeconds;
 
 const WAIT = /^wait\s*=\s*(?:"(\d{1,9})"|(\d{1,9}))\s*(?:;|$)/i;
 
