@@ -9,8 +9,12 @@ export class InvalidSortKey extends Error {
   override readonly name = 'InvalidSortKey';
 }
 
+/** As toISOString writes it. */
+const ISO_TIME = /^\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d\.\d{3}Z$/;
+
 const KINDS = {
-  time: (value: unknown) => typeof value === 'string' && !Number.isNaN(Date.parse(value)),
+  time: (value: unknown) =>
+    typeof value === 'string' && ISO_TIME.test(value) && !Number.isNaN(Date.parse(value)),
   uuid: (value: unknown) => typeof value === 'string' && isUuid(value),
   hash: (value: unknown) => typeof value === 'string' && /^[0-9a-f]{64}$/.test(value),
   name: (value: unknown) => typeof value === 'string' && /^[A-Za-z0-9._-]{1,64}$/.test(value),

@@ -13,7 +13,7 @@ const NAMES = new Set(
 );
 /** pg reports these without any code. */
 const WORDS =
-  /connection terminated|terminated unexpectedly|timeout exceeded when trying to connect|client has encountered a connection error|query read timeout|not queryable|can't reach database|server has closed the connection|cannot use a pool after calling end/i;
+  /connection terminated|terminated unexpectedly|timeout exceeded when trying to connect|^timeout expired$|client has encountered a connection error|query read timeout|not queryable|can't reach database|server has closed the connection|cannot use a pool after calling end/i;
 
 function signs(error: object): string[] {
   return ['code', 'originalCode', 'kind'].flatMap((name) => {
