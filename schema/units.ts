@@ -120,17 +120,27 @@ const rangeRule = (unit: FrequencyUnit) =>
     checkOrder(value.low, value.high, ['low', 'high'], { low: value.high, high: value.low }, issues);
   });
 
+const pointsRule = z
+  .int()
+  .min(2)
+  .check(({ value, issues }) => {
+    if (value <= LIMITS.gridPoints) return;
+    const allowed = { min: 2, max: LIMITS.gridPoints };
+    const fix = { reason: 'as many points as a curve may have', works: LIMITS.gridPoints };
+    const message = `asks for too many points; a curve has at most ${LIMITS.gridPoints}, and reduceTo thins it out`;
+    const params = { code: 'SPECIFICATION_INVALID', allowed, limit: 'GRID_POINTS', fix };
+    issues.push({ code: 'custom', input: value, message, params });
+  });
+
 const spanRule = (unit: FrequencyUnit) =>
-  z
-    .strictObject({ start: z.number(), stop: z.number(), points: z.int().min(2).max(LIMITS.gridPoints) })
-    .check(({ value, issues }) => {
-      const { start, stop, points } = value;
-      checkUnit(unit, { start, stop }, { points }, value, issues);
-      checkOrder(start, stop, ['start', 'stop'], { start: stop, stop: start, points }, issues);
-      if (start !== stop) return;
-      const message = 'has no width: start and stop are equal';
-      issues.push({ code: 'custom', input: value, message, params: { code: 'SPECIFICATION_INVALID' } });
-    });
+  z.strictObject({ start: z.number(), stop: z.number(), points: pointsRule }).check(({ value, issues }) => {
+    const { start, stop, points } = value;
+    checkUnit(unit, { start, stop }, { points }, value, issues);
+    checkOrder(start, stop, ['start', 'stop'], { start: stop, stop: start, points }, issues);
+    if (start !== stop) return;
+    const message = 'has no width: start and stop are equal';
+    issues.push({ code: 'custom', input: value, message, params: { code: 'SPECIFICATION_INVALID' } });
+  });
 
 function perUnit<T extends z.ZodType>(rule: (unit: FrequencyUnit) => T): Record<FrequencyUnit, T> {
   return {

@@ -1,7 +1,7 @@
 /** What a zod rule found wrong with a body, as a problem: pointers, what was given, what is allowed, the way out. */
 import type { z } from 'zod';
 import { pointerOf, valueAt, withEdits } from '../schema/pointer.ts';
-import type { FieldProblem, Nearest, NearestChange, ProblemCode } from '../schema/problem.ts';
+import type { FieldProblem, Nearest, NearestChange, ProblemCode, ProblemLimit } from '../schema/problem.ts';
 import { type ProblemError, refuse } from './errors.ts';
 
 type Issue = z.core.$ZodIssue;
@@ -10,6 +10,7 @@ type Issue = z.core.$ZodIssue;
 interface CheckParams {
   readonly code?: ProblemCode;
   readonly allowed?: unknown;
+  readonly limit?: ProblemLimit;
   readonly fix?: Fix;
 }
 
@@ -172,11 +173,13 @@ export function problemOfZod(
   const fields = error.issues.flatMap((issue) => fieldsOf(issue, body));
   const first =
     fields[0] ?? fieldOf('BAD_INPUT', [], 'The request is not well formed.', undefined, undefined);
+  const limit = error.issues[0] && paramsOf(error.issues[0]).limit;
   const more = fields.length > 1 ? ` (${fields.length} things are wrong; see errors)` : '';
   return refuse(first.code, first.detail.replace(/\.$/, `${more}.`), {
     pointer: first.pointer,
     ...(first.given === undefined ? {} : { given: first.given }),
     ...(first.allowed === undefined ? {} : { allowed: first.allowed }),
+    ...(limit === undefined ? {} : { limit }),
     errors: fields.length > 1 ? fields : [],
     nearest: nearestOf(error.issues, body, accepts),
   });
