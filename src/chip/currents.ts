@@ -4,6 +4,9 @@ import type { DriverChannel } from './model.ts';
 /** Room for the rounding of decimal steps: 0.0005 × 40000 counts as 20. */
 const STEP_SLACK = 1e-6;
 
+/** Digits that a product of a step count and a decimal step keeps; the 16th is dust (8.902000000000001). */
+const CLEAN_DIGITS = 15;
+
 /** Heat of a current: mA and Ω to mW. */
 export function powerMw(currentMa: number, resistanceOhm: number): number {
   return currentMa * currentMa * resistanceOhm * 1e-3;
@@ -29,5 +32,5 @@ export function channelLimit(channel: DriverChannel): {
 export function roundToStep(wantedMa: number, channel: DriverChannel): number {
   const most = Math.floor(channelLimit(channel).currentMa / channel.resolutionMa + STEP_SLACK);
   const steps = Math.min(most, Math.max(0, Math.round(wantedMa / channel.resolutionMa)));
-  return steps * channel.resolutionMa;
+  return Number((steps * channel.resolutionMa).toPrecision(CLEAN_DIGITS));
 }

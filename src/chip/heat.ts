@@ -6,7 +6,14 @@ import { phaseGain } from './heaters.ts';
 import { invert } from './linear.ts';
 import type { ChipModel } from './model.ts';
 import { type PhaseDemand, type ThermalTargets, UNDRIVEN_SLACK, wantedPhase } from './targets.ts';
-import { exchangeTurns, isBetter, leastTurns, type WrapProblem, type WrapSolution } from './wraps.ts';
+import {
+  exchangeTurns,
+  isBetter,
+  leastTurns,
+  type WrapProblem,
+  type WrapSolution,
+  wrapProblem,
+} from './wraps.ts';
 
 const TURN = 2 * Math.PI;
 
@@ -49,32 +56,51 @@ export function heatingOf(targets: ThermalTargets, chip: ChipModel): Heating {
       allowed: { max: MAX_CONDITION },
     });
   const channels = demands.map((demand) => chip.channels[demand.channel]!);
-  const problem: WrapProblem = {
+  const problem = wrapProblem(
     gain,
-    inverse: inverted.inverse,
-    floorMw: Float64Array.from(channels, (channel) => chip.heaterFloorRad / channel.phasePerMw),
-    limitMw: Float64Array.from(channels, (channel) =>
+    inverted.inverse,
+    Float64Array.from(channels, (channel) => chip.heaterFloorRad / channel.phasePerMw),
+    Float64Array.from(channels, (channel) =>
       powerMw(roundToStep(channelLimit(channel).currentMa, channel), channel.resistanceOhm),
     ),
-  };
+  );
   return { demands, resting: targets.demands.filter((demand) => !isDriven(demand)), problem };
 }
 
 /** Distance from the nearest whole turn, rad. */
 export const offTurn = (phaseRad: number): number => Math.abs(phaseRad - TURN * Math.round(phaseRad / TURN));
 
-/** Wanted phases less the phases at zero power. */
-export function liftFromRest(
-  demands: readonly PhaseDemand[],
-  chip: ChipModel,
-  branches: Uint8Array,
-): Float64Array {
-  return Float64Array.from(demands, (demand) =>
+/** Wanted phases less the phases at rest: on the branches +θ, and what −θ of each coupler adds. */
+export interface Lifts {
+  readonly plusRad: Float64Array;
+  readonly changeRad: readonly Float64Array[];
+}
+
+export function liftsOf(demands: readonly PhaseDemand[], branches: number, chip: ChipModel): Lifts {
+  const rest = (demand: PhaseDemand) =>
     demand.terms.reduce(
-      (phase, { channel, weight }) => phase - weight * chip.channels[channel]!.phaseAtZeroRad,
-      wantedPhase(demand, branches),
+      (sum, { channel, weight }) => sum + weight * chip.channels[channel]!.phaseAtZeroRad,
+      0,
+    );
+  const onPlus = new Uint8Array(branches);
+  return {
+    plusRad: Float64Array.from(demands, (demand) => wantedPhase(demand, onPlus) - rest(demand)),
+    changeRad: Array.from({ length: branches }, (_, branch) =>
+      Float64Array.from(demands, ({ parts }) =>
+        parts.reduce((sum, part) => (part.coupler === branch ? sum + part.minusRad - part.plusRad : sum), 0),
+      ),
     ),
-  );
+  };
+}
+
+function liftOn({ plusRad, changeRad }: Lifts, branches: Uint8Array): Float64Array {
+  const lift = Float64Array.from(plusRad);
+  for (let k = 0; k < changeRad.length; k++) {
+    if (branches[k] === 0) continue;
+    const change = changeRad[k]!;
+    for (let i = 0; i < lift.length; i++) lift[i]! += change[i]!;
+  }
+  return lift;
 }
 
 /**
@@ -83,21 +109,17 @@ export function liftFromRest(
  */
 export function leastHeat(heating: Heating, targets: ThermalTargets, chip: ChipModel): BranchSolution {
   const { demands, resting, problem } = heating;
-  const missed = (branches: Uint8Array) =>
-    resting.reduce((sum, demand) => sum + offTurn(wantedPhase(demand, branches)), 0);
-  const evaluate = (branches: Uint8Array): WrapSolution => {
-    const solution = leastTurns(problem, liftFromRest(demands, chip, branches));
-    const penalty = UNDRIVEN_PENALTY_MW * missed(branches);
-    return resting.length === 0 ? solution : { ...solution, violationMw: solution.violationMw + penalty };
+  const lifts = liftsOf(demands, targets.branches, chip);
+  const penalise = (solution: WrapSolution, branches: Uint8Array): WrapSolution => {
+    if (resting.length === 0) return solution;
+    const missed = resting.reduce((sum, demand) => sum + offTurn(wantedPhase(demand, branches)), 0);
+    return { ...solution, violationMw: solution.violationMw + UNDRIVEN_PENALTY_MW * missed };
   };
-  const polished = searchBranches(targets.branches, evaluate, BRANCHES_TO_POLISH).map((candidate) => {
-    const exchanged = exchangeTurns(
-      problem,
-      leastTurns(problem, liftFromRest(demands, chip, candidate.branches)),
-    );
-    const penalty = UNDRIVEN_PENALTY_MW * missed(candidate.branches);
-    const violationMw = exchanged.violationMw + (resting.length === 0 ? 0 : penalty);
-    return { branches: candidate.branches, solution: { ...exchanged, violationMw } };
+  const evaluate = (branches: Uint8Array): WrapSolution =>
+    penalise(leastTurns(problem, liftOn(lifts, branches)), branches);
+  const polished = searchBranches(targets.branches, evaluate, BRANCHES_TO_POLISH).map(({ branches }) => {
+    const start = leastTurns(problem, liftOn(lifts, branches));
+    return { branches, solution: penalise(exchangeTurns(problem, start), branches) };
   });
   const best = polished.reduce((a, b) => (isBetter(b.solution, a.solution) ? b : a));
   for (const demand of resting) {

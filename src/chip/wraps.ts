@@ -10,7 +10,6 @@
  * all n) is part of the tests, not of the product.
  */
 import { NoConvergence } from '../errors.ts';
-import { multiplyInto } from './linear.ts';
 
 const TURN = 2 * Math.PI;
 
@@ -32,100 +31,152 @@ export interface WrapProblem {
   readonly inverse: Float64Array;
   readonly floorMw: Float64Array;
   readonly limitMw: Float64Array;
+  /** Least phase above rest that powers within floor and limit can give each element, rad. */
+  readonly leastRad: Float64Array;
+  /** What one turn more of a heater adds to the total, mW. */
+  readonly totalPerTurnMw: Float64Array;
 }
 
-export interface WrapSolution {
-  readonly turns: Int32Array;
-  readonly powersMw: Float64Array;
+export function wrapProblem(
+  gain: Float64Array,
+  inverse: Float64Array,
+  floorMw: Float64Array,
+  limitMw: Float64Array,
+): WrapProblem {
+  const m = floorMw.length;
+  const leastRad = new Float64Array(m);
+  const totalPerTurnMw = new Float64Array(m);
+  for (let i = 0; i < m; i++)
+    for (let j = 0; j < m; j++) {
+      const entry = gain[i * m + j]!;
+      leastRad[i]! += entry * (entry >= 0 ? floorMw[j]! : limitMw[j]!);
+      totalPerTurnMw[j]! += TURN * inverse[i * m + j]!;
+    }
+  return { gain, inverse, floorMw, limitMw, leastRad, totalPerTurnMw };
+}
+
+/** What a choice of turns costs. */
+export interface HeatCost {
   readonly totalMw: number;
   /** Sum of what passes limits or misses floors, mW; 0 where all hold. */
   readonly violationMw: number;
 }
 
+export interface WrapSolution extends HeatCost {
+  readonly turns: Int32Array;
+  readonly powersMw: Float64Array;
+}
+
 /** Whether `a` is the better of two: limits first, then the total. */
-export function isBetter(a: WrapSolution, b: WrapSolution): boolean {
+export function isBetter(a: HeatCost, b: HeatCost): boolean {
   const difference = a.violationMw - b.violationMw;
   if (Math.abs(difference) > SLACK_MW) return difference < 0;
   return a.totalMw < b.totalMw;
 }
 
-function violationOf(problem: WrapProblem, powersMw: Float64Array): number {
-  let violation = 0;
-  for (let i = 0; i < powersMw.length; i++) {
-    const below = problem.floorMw[i]! - powersMw[i]!;
-    const above = powersMw[i]! - problem.limitMw[i]!;
-    if (below > SLACK_MW) violation += below;
-    if (above > SLACK_MW) violation += above;
-  }
-  return violation;
-}
-
-function evaluate(problem: WrapProblem, phasesRad: Float64Array, turns: Int32Array): WrapSolution {
-  const wanted = phasesRad.map((phase, i) => phase + TURN * turns[i]!);
-  const powersMw = new Float64Array(turns.length);
-  multiplyInto(powersMw, problem.inverse, wanted);
-  let totalMw = 0;
-  for (const power of powersMw) totalMw += power;
-  return { turns, powersMw, totalMw, violationMw: violationOf(problem, powersMw) };
-}
-
-/** For every heater the fewest turns that any powers within floor and limit could have. */
-function fewestTurns(problem: WrapProblem, phasesRad: Float64Array): Int32Array {
-  const m = phasesRad.length;
-  const turns = new Int32Array(m);
-  for (let i = 0; i < m; i++) {
-    let least = 0;
-    for (let j = 0; j < m; j++) {
-      const gain = problem.gain[i * m + j]!;
-      least += gain * (gain >= 0 ? problem.floorMw[j]! : problem.limitMw[j]!);
-    }
-    turns[i] = Math.ceil((least - phasesRad[i]!) / TURN - SLACK_MW);
-  }
-  return turns;
+function missedMw(problem: WrapProblem, heater: number, powerMw: number): number {
+  const below = problem.floorMw[heater]! - powerMw;
+  if (below > SLACK_MW) return below;
+  const above = powerMw - problem.limitMw[heater]!;
+  return above > SLACK_MW ? above : 0;
 }
 
 /**
- * The componentwise least turns whose powers all reach their floors; limits are not looked at. Phases `phasesRad`
- * (m values) are relative to the phases at zero power. Cost O(m²) a pass, 2 to 5 passes.
+ * The componentwise least turns whose powers all reach their floors; limits are only counted. Phases `phasesRad`
+ * (m values) are relative to the phases at zero power. Cost O(m²) to start with and O(m) for each turn raised.
  * Throws NoConvergence where crosstalk is so strong that raising one heater lowers others without end.
  */
 export function leastTurns(problem: WrapProblem, phasesRad: Float64Array): WrapSolution {
+  const { inverse, floorMw, leastRad } = problem;
   const m = phasesRad.length;
-  const turns = fewestTurns(problem, phasesRad);
-  for (let pass = 0; pass < MAX_RAISING_PASSES; pass++) {
-    const solution = evaluate(problem, phasesRad, turns);
-    let raised = false;
-    for (let i = 0; i < m; i++) {
-      const lacking = problem.floorMw[i]! - solution.powersMw[i]!;
-      if (lacking <= SLACK_MW) continue;
-      turns[i]! += Math.max(1, Math.ceil(lacking / (TURN * problem.inverse[i * m + i]!) - SLACK_MW));
-      raised = true;
-    }
-    if (!raised) return solution;
+  const turns = new Int32Array(m);
+  const powersMw = new Float64Array(m);
+  for (let j = 0; j < m; j++) {
+    turns[j] = Math.ceil((leastRad[j]! - phasesRad[j]!) / TURN - SLACK_MW);
+    const wanted = phasesRad[j]! + TURN * turns[j]!;
+    for (let i = 0; i < m; i++) powersMw[i]! += inverse[i * m + j]! * wanted;
   }
-  const { violationMw } = evaluate(problem, phasesRad, turns);
-  throw new NoConvergence('least heater turns', MAX_RAISING_PASSES, violationMw);
+  let settled = false;
+  for (let pass = 0; !settled; pass++) {
+    settled = true;
+    for (let i = 0; i < m; i++) {
+      const lacking = floorMw[i]! - powersMw[i]!;
+      if (lacking <= SLACK_MW) continue;
+      if (pass >= MAX_RAISING_PASSES)
+        throw new NoConvergence('least heater turns', MAX_RAISING_PASSES, lacking);
+      const more = Math.max(1, Math.ceil(lacking / (TURN * inverse[i * m + i]!) - SLACK_MW));
+      turns[i]! += more;
+      for (let r = 0; r < m; r++) powersMw[r]! += more * TURN * inverse[r * m + i]!;
+      settled = false;
+    }
+  }
+  let totalMw = 0;
+  let violationMw = 0;
+  for (let i = 0; i < m; i++) {
+    totalMw += powersMw[i]!;
+    violationMw += missedMw(problem, i, powersMw[i]!);
+  }
+  return { turns, powersMw, totalMw, violationMw };
 }
 
-/** All exchanges of one turn on up to `most` heaters, as lists of [heater, ±1]. */
-function* exchanges(m: number, most: number): Generator<readonly (readonly [number, number])[]> {
-  const signs = [-1, 1] as const;
+/** The best exchange of a scan so far: heaters and ±1 each, `size` of them; 0 while none helps. */
+interface Scan {
+  readonly heaters: Int32Array;
+  readonly signs: Int32Array;
+  size: number;
+  totalMw: number;
+  violationMw: number;
+}
+
+/** Takes over the exchange in the first `size` of `heaters` and `signs` where it beats the best of the scan. */
+function consider(
+  problem: WrapProblem,
+  from: WrapSolution,
+  heaters: Int32Array,
+  signs: Int32Array,
+  size: number,
+  best: Scan,
+): void {
+  let totalMw = from.totalMw;
+  for (let q = 0; q < size; q++) totalMw += signs[q]! * problem.totalPerTurnMw[heaters[q]!]!;
+  if (best.violationMw === 0 && totalMw >= best.totalMw - SLACK_MW) return;
+  const m = from.powersMw.length;
+  let violationMw = 0;
+  for (let r = 0; r < m; r++) {
+    let power = from.powersMw[r]!;
+    for (let q = 0; q < size; q++) power += signs[q]! * TURN * problem.inverse[r * m + heaters[q]!]!;
+    violationMw += missedMw(problem, r, power);
+    if (violationMw > best.violationMw + SLACK_MW) return;
+  }
+  if (violationMw > best.violationMw - SLACK_MW && totalMw >= best.totalMw - SLACK_MW) return;
+  best.heaters.set(heaters);
+  best.signs.set(signs);
+  best.size = size;
+  best.totalMw = totalMw;
+  best.violationMw = violationMw;
+}
+
+function scanExchanges(problem: WrapProblem, from: WrapSolution, best: Scan): void {
+  const m = from.turns.length;
+  const triples = m <= MAX_HEATERS_FOR_TRIPLES;
+  const heaters = new Int32Array(3);
+  const signs = new Int32Array(3);
   for (let i = 0; i < m; i++)
-    for (const si of signs) {
-      yield [[i, si]];
-      for (let j = i + 1; j < m && most >= 2; j++)
-        for (const sj of signs) {
-          yield [
-            [i, si],
-            [j, sj],
-          ];
-          for (let k = j + 1; k < m && most >= 3; k++)
-            for (const sk of signs)
-              yield [
-                [i, si],
-                [j, sj],
-                [k, sk],
-              ];
+    for (let si = -1; si <= 1; si += 2) {
+      heaters[0] = i;
+      signs[0] = si;
+      consider(problem, from, heaters, signs, 1, best);
+      for (let j = i + 1; j < m; j++)
+        for (let sj = -1; sj <= 1; sj += 2) {
+          heaters[1] = j;
+          signs[1] = sj;
+          consider(problem, from, heaters, signs, 2, best);
+          for (let k = triples ? j + 1 : m; k < m; k++)
+            for (let sk = -1; sk <= 1; sk += 2) {
+              heaters[2] = k;
+              signs[2] = sk;
+              consider(problem, from, heaters, signs, 3, best);
+            }
         }
     }
 }
@@ -136,34 +187,26 @@ function* exchanges(m: number, most: number): Generator<readonly (readonly [numb
  */
 export function exchangeTurns(problem: WrapProblem, start: WrapSolution): WrapSolution {
   const m = start.turns.length;
-  const totalPerTurn = new Float64Array(m);
-  for (let j = 0; j < m; j++)
-    for (let i = 0; i < m; i++) totalPerTurn[j]! += TURN * problem.inverse[i * m + j]!;
-  const most = m <= MAX_HEATERS_FOR_TRIPLES ? 3 : 2;
-  let best = start;
-  const trial = new Float64Array(m);
+  let current = start;
   for (let step = 0; step < MAX_EXCHANGES; step++) {
-    let next: WrapSolution | null = null;
-    for (const exchange of exchanges(m, most)) {
-      let totalMw = best.totalMw;
-      for (const [heater, sign] of exchange) totalMw += sign * totalPerTurn[heater]!;
-      if (best.violationMw === 0 && totalMw >= (next ?? best).totalMw - SLACK_MW) continue;
-      trial.set(best.powersMw);
-      for (const [heater, sign] of exchange)
-        for (let i = 0; i < m; i++) trial[i]! += sign * TURN * problem.inverse[i * m + heater]!;
-      const candidate = {
-        turns: best.turns,
-        powersMw: trial,
-        totalMw,
-        violationMw: violationOf(problem, trial),
-      };
-      if (!isBetter(candidate, next ?? best)) continue;
-      const turns = Int32Array.from(best.turns);
-      for (const [heater, sign] of exchange) turns[heater]! += sign;
-      next = { ...candidate, turns, powersMw: Float64Array.from(trial) };
+    const { totalMw, violationMw } = current;
+    const best: Scan = {
+      heaters: new Int32Array(3),
+      signs: new Int32Array(3),
+      size: 0,
+      totalMw,
+      violationMw,
+    };
+    scanExchanges(problem, current, best);
+    if (best.size === 0) return current;
+    const turns = Int32Array.from(current.turns);
+    const powersMw = Float64Array.from(current.powersMw);
+    for (let q = 0; q < best.size; q++) {
+      turns[best.heaters[q]!]! += best.signs[q]!;
+      for (let r = 0; r < m; r++)
+        powersMw[r]! += best.signs[q]! * TURN * problem.inverse[r * m + best.heaters[q]!]!;
     }
-    if (next === null) return best;
-    best = next;
+    current = { turns, powersMw, totalMw: best.totalMw, violationMw: best.violationMw };
   }
-  throw new NoConvergence('exchange of heater turns', MAX_EXCHANGES, best.violationMw);
+  throw new NoConvergence('exchange of heater turns', MAX_EXCHANGES, current.violationMw);
 }

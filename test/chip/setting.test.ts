@@ -2,7 +2,7 @@
 import { readFileSync } from 'node:fs';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
-import { heatingOf, leastHeat, liftFromRest } from '../../src/chip/heat.ts';
+import { heatingOf, leastHeat, liftsOf } from '../../src/chip/heat.ts';
 import {
   type ChipModel,
   circuitOfSetting,
@@ -128,8 +128,8 @@ describe('setting', () => {
       const chip = inventChip({ cells: [{ name: 'main', ringsPerArm: [3, 3] }], seed: seed + 100 });
       const targets = thermalTargets(pairOn('ellip5', chip), chip);
       const heating = heatingOf(targets, chip);
-      const plus = liftFromRest(heating.demands, chip, new Uint8Array(targets.branches));
-      const always = exchangeTurns(heating.problem, leastTurns(heating.problem, plus)).totalMw;
+      const { plusRad } = liftsOf(heating.demands, targets.branches, chip);
+      const always = exchangeTurns(heating.problem, leastTurns(heating.problem, plusRad)).totalMw;
       return 1 - leastHeat(heating, targets, chip).solution.totalMw / always;
     });
     expect(Math.min(...savings)).toBeGreaterThanOrEqual(0);

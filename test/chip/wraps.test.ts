@@ -4,7 +4,7 @@
  */
 import { describe, expect, it } from 'vitest';
 import { invert } from '../../src/chip/linear.ts';
-import { exchangeTurns, leastTurns, type WrapProblem } from '../../src/chip/wraps.ts';
+import { exchangeTurns, leastTurns, type WrapProblem, wrapProblem } from '../../src/chip/wraps.ts';
 import { invent } from './invented-chips.ts';
 
 const TURN = 2 * Math.PI;
@@ -27,7 +27,7 @@ function inventProblem(seed: number, crosstalk: number): { problem: WrapProblem;
   const floorMw = Float64Array.from({ length: m }, () => 4);
   const limitMw = Float64Array.from({ length: m }, () => 150);
   const phases = Float64Array.from({ length: m }, () => TURN * (2 * random() - 1));
-  return { problem: { gain, inverse: invert(gain, m)!.inverse, floorMw, limitMw }, phases };
+  return { problem: wrapProblem(gain, invert(gain, m)!.inverse, floorMw, limitMw), phases };
 }
 
 /**
@@ -120,15 +120,12 @@ describe('whole turns of heaters', () => {
     // Two heaters, the first just beyond its limit by crosstalk alone: more of the second lowers it.
     const gain = Float64Array.from([0.125, 0.02, 0.005, 0.125]);
     const floorMw = Float64Array.from([4, 4]);
-    const unlimited = {
-      gain,
-      inverse: invert(gain, 2)!.inverse,
-      floorMw,
-      limitMw: Float64Array.from([500, 500]),
-    };
+    const wide = Float64Array.from([500, 500]);
+    const unlimited = wrapProblem(gain, invert(gain, 2)!.inverse, floorMw, wide);
     const phases = Float64Array.from([6, 1]);
     const free = exchangeTurns(unlimited, leastTurns(unlimited, phases));
-    const limited = { ...unlimited, limitMw: Float64Array.from([free.powersMw[0]! - 1, 500]) };
+    const lower = Float64Array.from([free.powersMw[0]! - 1, 500]);
+    const limited = wrapProblem(gain, unlimited.inverse, floorMw, lower);
     const found = exchangeTurns(limited, leastTurns(limited, phases));
     expect(found.violationMw).toBe(0);
     expect(found.powersMw[0]!).toBeLessThanOrEqual(limited.limitMw[0]!);
