@@ -1,7 +1,14 @@
 /** What a finished design holds: plain data, stored as JSON; circuit and setting are the truth, the rest a record made from them. */
-import type { CircuitParameters } from '../circuit/circuit.ts';
+
 import type { Setting } from '../chip/setting.ts';
-import type { Architecture, Family, FilterSpecification, MaskSpecification, OutputPort } from '../filter/specification.ts';
+import type { CircuitParameters } from '../circuit/circuit.ts';
+import type {
+  Architecture,
+  Family,
+  FilterSpecification,
+  MaskSpecification,
+  OutputPort,
+} from '../filter/specification.ts';
 import type { Compliance, Figures } from '../response/response.ts';
 
 export interface ComplexValue {
@@ -68,6 +75,8 @@ export interface Design {
   /** The lossless circuit with every parameter: what CIRCUIT simulates and the netlist is made of. */
   readonly circuit: CircuitParameters;
   readonly setting: Setting;
+  /** Middle of the passband, GHz from the reference frequency. */
+  readonly centreGhz: number;
   /** What is judged: the mask asked for, or the one that the family's own parameters state. */
   readonly mask: MaskSpecification;
   readonly compliance: Compliance;
