@@ -2,7 +2,7 @@
  * The HTTP application: every part is made elsewhere and put together here, in the order in which a request meets it.
  * Headers, then access, then the body, then the handler; whatever is refused on the way leaves as a problem.
  */
-import Fastify, { type FastifyBaseLogger, type FastifyInstance } from 'fastify';
+import Fastify, { type FastifyBaseLogger, type FastifyInstance, LogController } from 'fastify';
 import type { Logger } from 'pino';
 import type { Authenticator } from './auth/index.ts';
 import type { Config } from './config.ts';
@@ -31,7 +31,7 @@ export interface AppDeps {
   readonly store: Store;
   readonly operations: Operations;
   readonly authenticator: Authenticator;
-  readonly config: Pick<Config, 'ratePerS' | 'trustProxy'>;
+  readonly config: Pick<Config, 'trustProxy'>;
   readonly logger: Logger;
   /** Version of the program, for the document. */
   readonly version: string;
@@ -50,7 +50,8 @@ export async function buildApp(deps: AppDeps): Promise<FastifyInstance> {
   const { limits } = operations;
   const app: FastifyInstance = Fastify({
     loggerInstance: logger as FastifyBaseLogger,
-    disableRequestLogging: true,
+    // One line a request, written where the metrics are counted.
+    logController: new LogController({ disableRequestLogging: true }),
     genReqId: createRequestIds(),
     bodyLimit: limits.bodyBytes,
     requestTimeout: REQUEST_TIMEOUT_MS,
@@ -67,7 +68,7 @@ export async function buildApp(deps: AppDeps): Promise<FastifyInstance> {
   app.setSerializerCompiler(() => JSON.stringify);
 
   const waiting = createWaiting(store.notifications, limits);
-  const rate = { perSecond: config.ratePerS, burst: 2 * config.ratePerS };
+  const rate = { perSecond: limits.requestsPerSecond, burst: limits.requestBurst };
   const admit = createAdmit(
     authenticator,
     createTokenBuckets(rate, () => performance.now()),

@@ -9,10 +9,9 @@ import {
   reviseChipRule,
   saveVersionRule,
 } from '../../schema/library.ts';
-import { problemRule } from '../../schema/problem.ts';
 import { STAGES } from '../../schema/response.ts';
 import { ARCHITECTURES, FAMILIES, OUTPUTS, REFERENCES, SHAPES } from '../../schema/specification.ts';
-import { documentedRules } from './describe.ts';
+import { documentedRules, problemAnswer } from './describe.ts';
 
 const named = <T extends z.ZodType>(id: string, rule: T): T => {
   documentedRules.add(rule, { id });
@@ -131,7 +130,7 @@ export const requestAnswer = named(
     progress: z.number().min(0).max(1),
     cached: z.boolean().describe('Answered from the store; nothing was written.'),
     asked: z.looseObject({}).describe('The body as it was sent.'),
-    problem: problemRule.nullable(),
+    problem: problemAnswer.nullable(),
     createdAt: time,
     createdBy: actorOrNone,
     finishedAt: time.nullable(),
@@ -145,7 +144,7 @@ export const checkAnswer = z.strictObject({
   ok: z.boolean(),
   order: z.int().nullable(),
   rings: z.int().nullable(),
-  problem: problemRule.nullable(),
+  problem: problemAnswer.nullable(),
   specification: specification.nullable(),
   chipRevision: z.int().nullable(),
   designHash: hash.nullable(),

@@ -1,13 +1,34 @@
 /** What the OpenAPI document says of a route, made from the same zod rules that check it. */
 import type { FastifySchema } from 'fastify';
 import { z } from 'zod';
-import { type Problem, type ProblemCode, problemRule } from '../../schema/problem.ts';
+import {
+  fieldProblemRule,
+  nearestChangeRule,
+  nearestRule,
+  type Problem,
+  type ProblemCode,
+  problemRule,
+} from '../../schema/problem.ts';
 import { problemOf } from '../errors.ts';
 import { PROBLEM_TYPE } from './frame/index.ts';
 
 /** Components of the document: rules that are referred to by name. */
 export const documentedRules = z.registry<{ id: string }>();
-documentedRules.add(problemRule, { id: 'Problem' });
+
+const anything = z.unknown();
+/** The rule of problems with "any JSON" said plainly: the recursive rule of it has no name in the document. */
+export const problemAnswer = problemRule.extend({
+  given: anything.optional(),
+  allowed: anything.optional(),
+  errors: z.array(fieldProblemRule.extend({ given: anything.optional(), allowed: anything.optional() })),
+  nearest: z.array(
+    nearestRule.extend({
+      changes: z.array(nearestChangeRule.extend({ given: anything, works: anything })),
+      input: anything,
+    }),
+  ),
+});
+documentedRules.add(problemAnswer, { id: 'Problem' });
 
 export interface Answer {
   readonly about: string;
@@ -43,7 +64,7 @@ function problemAnswers(codes: readonly ProblemCode[]): Record<number, object> {
   for (const [status, problems] of byStatus) {
     answers[status] = {
       description: problems.map(({ code, title }) => `${code}: ${title}.`).join(' '),
-      content: { [PROBLEM_TYPE]: { schema: problemRule } },
+      content: { [PROBLEM_TYPE]: { schema: problemAnswer } },
     };
   }
   return answers;
@@ -51,15 +72,12 @@ function problemAnswers(codes: readonly ProblemCode[]): Record<number, object> {
 
 function goodAnswers(answers: Readonly<Record<number, Answer>>): Record<number, object> {
   return Object.fromEntries(
-    Object.entries(answers).map(([status, { about, content }]) => [
-      status,
-      {
-        description: about,
-        content: Object.fromEntries(
-          Object.entries(content ?? {}).map(([type, schema]) => [type, { schema }]),
-        ),
-      },
-    ]),
+    Object.entries(answers).map(([status, { about, content }]) => {
+      // The document's maker takes a null schema to mean that there is no content.
+      if (!content) return [status, z.null().describe(about)];
+      const media = Object.entries(content).map(([type, schema]) => [type, { schema }]);
+      return [status, { description: about, content: Object.fromEntries(media) }];
+    }),
   );
 }
 

@@ -19,6 +19,25 @@ const PAGE_POLICY =
 const MARKDOWN = { suffix: 'md', mediaType: 'text/markdown' };
 const HTML = { suffix: 'html', mediaType: 'text/html' };
 
+const namedRules = createJsonSchemaTransformObject({ schemaRegistry: documentedRules });
+
+/** Every named rule comes in a form for requests and one for answers; what nothing refers to is left out. */
+function withoutUnused(document: ReturnType<typeof namedRules>): ReturnType<typeof namedRules> {
+  if (!('components' in document) || !document.components?.schemas) return document;
+  const { schemas, ...components } = document.components;
+  const referredIn = (part: unknown): string[] =>
+    [...JSON.stringify(part).matchAll(/"#\/components\/schemas\/([^"/]+)"/g)].map((found) => found[1]!);
+  const used = new Set<string>();
+  const waiting = referredIn({ ...document, components });
+  for (let name = waiting.pop(); name !== undefined; name = waiting.pop()) {
+    if (used.has(name)) continue;
+    used.add(name);
+    waiting.push(...referredIn(schemas[name] ?? null));
+  }
+  const kept = Object.fromEntries(Object.entries(schemas).filter(([name]) => used.has(name)));
+  return { ...document, components: { ...components, schemas: kept } } as typeof document;
+}
+
 export function registerDocument(app: FastifyInstance, version: string): void {
   app.register(swagger, {
     openapi: {
@@ -38,7 +57,7 @@ export function registerDocument(app: FastifyInstance, version: string): void {
       },
     },
     transform: createJsonSchemaTransform({ schemaRegistry: documentedRules }),
-    transformObject: createJsonSchemaTransformObject({ schemaRegistry: documentedRules }),
+    transformObject: (document) => withoutUnused(namedRules(document)),
   });
 }
 

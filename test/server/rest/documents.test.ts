@@ -69,6 +69,9 @@ describe('OpenAPI document', () => {
         .reduce<any>((node, part) => node?.[part], document);
       expect(target, reference).toBeDefined();
     }
+    for (const name of Object.keys(document.components.schemas)) {
+      expect(references).toContain(`#/components/schemas/${name}`);
+    }
   });
 
   it('describes the problems of every route with their codes', () => {

@@ -44,7 +44,11 @@ export interface Service {
   readonly tokens: Readonly<Record<Role, string>>;
   /** As DESIGNER when no token is named. */
   call(path: string, ask?: Ask): Promise<Answer>;
-  newToken(role: Role, expiresAt?: Date, actor?: string): Promise<{ readonly token: string; readonly id: string }>;
+  newToken(
+    role: Role,
+    expiresAt?: Date,
+    actor?: string,
+  ): Promise<{ readonly token: string; readonly id: string }>;
   revoke(tokenId: string): Promise<void>;
   registerChip(serial: string, chip?: InventedChip): Promise<Answer>;
   stop(): Promise<void>;
@@ -57,11 +61,13 @@ export async function startService(options: ServiceOptions = {}): Promise<Servic
   const database = await createTestDatabase();
   const databaseUrl = options.databaseUrl ? await options.databaseUrl(database.url) : database.url;
   const store = await createStore({ databaseUrl });
-  const operations = createOperations({ store, version: '0.0.0-test' });
+  const ratePerS = options.ratePerS ?? RATE_PER_S;
+  const limits = { requestsPerSecond: ratePerS, requestBurst: 2 * ratePerS };
+  const operations = createOperations({ store, version: '0.0.0-test', limits });
   const authenticator = createAuthenticator({ store });
   const { logLine } = options;
   const logger = logLine ? pino({ level: 'info' }, { write: logLine }) : pino({ level: 'silent' });
-  const config = { ratePerS: options.ratePerS ?? RATE_PER_S, trustProxy: options.trustProxy ?? false };
+  const config = { trustProxy: options.trustProxy ?? false };
   const app = await buildApp({ store, operations, authenticator, config, logger, version: '0.0.0-test' });
   await app.listen({ port: 0, host: '127.0.0.1' });
   const address = app.server.address();
