@@ -5,6 +5,7 @@ import { configurationOperations } from './configurations.ts';
 import { createContext, type OperationsDeps } from './context.ts';
 import { designOperations } from './designs.ts';
 import { edgeOperations } from './edges.ts';
+import { manyEdgeOperations } from './many-edges.ts';
 import { nodeFinders } from './nodes.ts';
 import type { Operations } from './operations.ts';
 import { peopleOperations } from './people.ts';
@@ -23,6 +24,7 @@ export function createOperations(deps: OperationsDeps): Operations {
     ...releaseOperations(context),
     ...peopleOperations(context),
     ...edgeOperations(context),
+    ...manyEdgeOperations(context),
   };
   const finders = nodeFinders(context, operations);
   return {

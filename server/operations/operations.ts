@@ -221,6 +221,31 @@ export interface Operations {
   configurationById(viewer: Viewer, id: string): Promise<ConfigurationRecord | null>;
   versionById(viewer: Viewer, id: string): Promise<VersionRecord | null>;
   actorsById(viewer: Viewer, ids: readonly string[]): Promise<ReadonlyMap<string, ActorRecord>>;
+  /** Many at once, one select each; what is unknown or hidden is not in the map. */
+  chipsById(viewer: Viewer, ids: readonly string[]): Promise<ReadonlyMap<string, ChipRecord>>;
+  revisionsById(viewer: Viewer, ids: readonly string[]): Promise<ReadonlyMap<string, ChipRevisionRecord>>;
+  designsById(viewer: Viewer, hashes: readonly string[]): Promise<ReadonlyMap<string, DesignRecord>>;
+  configurationsById(
+    viewer: Viewer,
+    ids: readonly string[],
+  ): Promise<ReadonlyMap<string, ConfigurationRecord>>;
+  /** By the id of the chip. */
+  headRevisions(viewer: Viewer, chipIds: readonly string[]): Promise<ReadonlyMap<string, ChipRevisionRecord>>;
+  /** By the id of the configuration. */
+  latestVersions(
+    viewer: Viewer,
+    configurationIds: readonly string[],
+  ): Promise<ReadonlyMap<string, VersionRecord>>;
+  /** By the id of the chip: where each of its release names points now. */
+  releasesOfChips(
+    viewer: Viewer,
+    chipIds: readonly string[],
+  ): Promise<ReadonlyMap<string, readonly ReleaseRecord[]>>;
+  /** By the id of the version, the newest first. */
+  releasesOfVersions(
+    viewer: Viewer,
+    versionIds: readonly string[],
+  ): Promise<ReadonlyMap<string, readonly ReleaseRecord[]>>;
   /** Bare uuid of a stored request, as notifications carry it. */
   requestByUuid(viewer: Viewer, uuid: string): Promise<DesignRequest | null>;
 }

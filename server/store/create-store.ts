@@ -2,8 +2,11 @@
 import {
   findChip,
   findChipById,
+  findChipsById,
+  findHeadRevisions,
   findRevision,
   findRevisionById,
+  findRevisionsById,
   listChips,
   listRevisions,
 } from './chip/find.ts';
@@ -15,11 +18,22 @@ import { registerWorker } from './computation/register-worker.ts';
 import { reportProgress } from './computation/report-progress.ts';
 import { startComputation } from './computation/start.ts';
 import { sweep } from './computation/sweep.ts';
-import { findConfiguration, findConfigurationById, listConfigurations } from './configuration/find.ts';
+import {
+  findConfiguration,
+  findConfigurationById,
+  findConfigurationsById,
+  listConfigurations,
+} from './configuration/find.ts';
 import { saveVersion } from './configuration/save-version.ts';
-import { findVersion, findVersionById, listVersions, listVersionsOfDesign } from './configuration/version.ts';
+import {
+  findLatestVersions,
+  findVersion,
+  findVersionById,
+  listVersions,
+  listVersionsOfDesign,
+} from './configuration/version.ts';
 import { type Database, openDatabase, type StoreLogger } from './database.ts';
-import { findDesign, findRefusal } from './design/find.ts';
+import { findDesign, findDesigns, findRefusal } from './design/find.ts';
 import { listDesigns } from './design/list.ts';
 import { findHistoryEntry, listHistory } from './history/list.ts';
 import { migrate } from './migrate.ts';
@@ -29,7 +43,9 @@ import {
   findReleaseBySequence,
   listReleaseLog,
   listReleases,
+  listReleasesOfChips,
   listReleasesOfVersion,
+  listReleasesOfVersions,
 } from './release/find.ts';
 import { publishRelease } from './release/publish.ts';
 import { cancelRequest } from './request/cancel.ts';
@@ -67,14 +83,18 @@ function operationsOf(database: Database, systemId: string): Operations {
 
     findChip: findChip(database),
     findChipById: findChipById(database),
+    findChipsById: findChipsById(database),
     listChips: listChips(database),
     findRevision: findRevision(database),
     findRevisionById: findRevisionById(database),
+    findRevisionsById: findRevisionsById(database),
+    findHeadRevisions: findHeadRevisions(database),
     listRevisions: listRevisions(database),
     registerChip: registerChip(database),
     reviseChip: reviseChip(database),
 
     findDesign: findDesign(database),
+    findDesigns: findDesigns(database),
     findRefusal: findRefusal(database),
     listDesigns: listDesigns(database),
     submitRequest: submitRequest(database),
@@ -92,9 +112,11 @@ function operationsOf(database: Database, systemId: string): Operations {
 
     findConfiguration: findConfiguration(database),
     findConfigurationById: findConfigurationById(database),
+    findConfigurationsById: findConfigurationsById(database),
     listConfigurations: listConfigurations(database),
     findVersion: findVersion(database),
     findVersionById: findVersionById(database),
+    findLatestVersions: findLatestVersions(database),
     listVersions: listVersions(database),
     listVersionsOfDesign: listVersionsOfDesign(database),
     saveVersion: saveVersion(database),
@@ -102,8 +124,10 @@ function operationsOf(database: Database, systemId: string): Operations {
     findRelease: findRelease(database),
     findReleaseBySequence: findReleaseBySequence(database),
     listReleases: listReleases(database),
+    listReleasesOfChips: listReleasesOfChips(database),
     listReleaseLog: listReleaseLog(database),
     listReleasesOfVersion: listReleasesOfVersion(database),
+    listReleasesOfVersions: listReleasesOfVersions(database),
     publishRelease: publishRelease(database),
 
     listHistory: listHistory(database),

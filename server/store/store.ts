@@ -77,9 +77,13 @@ export interface Who {
 export interface Chips {
   findChip(serial: string): Promise<ChipRecord | null>;
   findChipById(id: string): Promise<ChipRecord | null>;
+  /** In any order, unknown ids left out; so everywhere where many are asked for at once. */
+  findChipsById(ids: readonly string[]): Promise<readonly ChipRecord[]>;
   listChips(page: PageAsk): Promise<Page<ChipRecord>>;
   findRevision(chipId: string, number: number): Promise<ChipRevisionRecord | null>;
   findRevisionById(id: string): Promise<ChipRevisionRecord | null>;
+  findRevisionsById(ids: readonly string[]): Promise<readonly ChipRevisionRecord[]>;
+  findHeadRevisions(chipIds: readonly string[]): Promise<readonly ChipRevisionRecord[]>;
   listRevisions(chipId: string, page: PageAsk): Promise<Page<ChipRevisionRecord>>;
   registerChip(
     by: Acting,
@@ -121,6 +125,7 @@ export type Submitted =
 export interface Designs {
   /** The fast path: one prepared select. */
   findDesign(id: string): Promise<DesignRecord | null>;
+  findDesigns(ids: readonly string[]): Promise<readonly DesignRecord[]>;
   findRefusal(id: string): Promise<Problem | null>;
   listDesigns(
     filter: DesignFilter,
@@ -167,9 +172,12 @@ export interface Computations {
 export interface Configurations {
   findConfiguration(chipId: string, name: string): Promise<ConfigurationRecord | null>;
   findConfigurationById(id: string): Promise<ConfigurationRecord | null>;
+  findConfigurationsById(ids: readonly string[]): Promise<readonly ConfigurationRecord[]>;
   listConfigurations(chipId: string, page: PageAsk): Promise<Page<ConfigurationRecord>>;
   findVersion(configurationId: string, number: number): Promise<VersionRecord | null>;
   findVersionById(id: string): Promise<VersionRecord | null>;
+  /** The newest version of each. */
+  findLatestVersions(configurationIds: readonly string[]): Promise<readonly VersionRecord[]>;
   listVersions(configurationId: string, page: PageAsk): Promise<Page<VersionRecord>>;
   listVersionsOfDesign(designId: string, page: PageAsk): Promise<Page<VersionRecord>>;
   saveVersion(
@@ -198,8 +206,10 @@ export interface Releases {
   findRelease(chipSerial: string, name: string): Promise<ReleaseRecord | null>;
   findReleaseBySequence(chipId: string, name: string, sequence: number): Promise<ReleaseRecord | null>;
   listReleases(chipId: string): Promise<readonly ReleaseRecord[]>;
+  listReleasesOfChips(chipIds: readonly string[]): Promise<readonly ReleaseRecord[]>;
   listReleaseLog(chipId: string, name: string, page: PageAsk): Promise<Page<ReleaseRecord>>;
   listReleasesOfVersion(versionId: string): Promise<readonly ReleaseRecord[]>;
+  listReleasesOfVersions(versionIds: readonly string[]): Promise<readonly ReleaseRecord[]>;
   /** `expectedSequence` 0: only if there is none yet. */
   publishRelease(
     by: Acting,

@@ -22,6 +22,13 @@ export const findChipById =
   async (id) =>
     isUuid(id) ? database.prisma.chip.findUnique({ where: { id } }) : null;
 
+const uuids = (ids: readonly string[]): string[] => ids.filter((id) => isUuid(id));
+
+export const findChipsById =
+  (database: Database): Chips['findChipsById'] =>
+  (ids) =>
+    database.prisma.chip.findMany({ where: { id: { in: uuids(ids) } } });
+
 export const listChips =
   (database: Database): Chips['listChips'] =>
   async (page) => {
@@ -48,6 +55,29 @@ export const findRevisionById =
     if (!isUuid(id)) return null;
     const row = await database.prisma.chipRevision.findUnique({ where: { id }, ...REVISION });
     return row && revisionOf(row);
+  };
+
+export const findRevisionsById =
+  (database: Database): Chips['findRevisionsById'] =>
+  async (ids) => {
+    const rows = await database.prisma.chipRevision.findMany({
+      where: { id: { in: uuids(ids) } },
+      ...REVISION,
+    });
+    return rows.map(revisionOf);
+  };
+
+export const findHeadRevisions =
+  (database: Database): Chips['findHeadRevisions'] =>
+  async (chipIds) => {
+    const { rows } = await database.pool.query<ChipRevisionRecord>(
+      `select r.id, r.chip_id as "chipId", r.number, r.hash, r.model, r.note, r.created_at as "createdAt",
+         r.created_by as "createdBy"
+       from chip c join chip_revision r on r.chip_id = c.id and r.number = c.head_revision
+       where c.id = any($1::uuid[])`,
+      [uuids(chipIds)],
+    );
+    return rows;
   };
 
 /** Newest first. */

@@ -13,6 +13,11 @@ export const findConfigurationById =
   async (id) =>
     isUuid(id) ? database.prisma.configuration.findUnique({ where: { id } }) : null;
 
+export const findConfigurationsById =
+  (database: Database): Configurations['findConfigurationsById'] =>
+  (ids) =>
+    database.prisma.configuration.findMany({ where: { id: { in: ids.filter((id) => isUuid(id)) } } });
+
 export const listConfigurations =
   (database: Database): Configurations['listConfigurations'] =>
   async (chipId, page) => {

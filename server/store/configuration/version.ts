@@ -32,6 +32,16 @@ export const findVersionById =
   async (id) =>
     isUuid(id) ? readVersion(database.pool, id) : null;
 
+export const findLatestVersions =
+  (database: Database): Configurations['findLatestVersions'] =>
+  async (configurationIds) => {
+    const { rows } = await database.pool.query<VersionRecord>(
+      `${FROM} where f.id = any($1::uuid[]) and v.number = f.last_version`,
+      [configurationIds.filter((id) => isUuid(id))],
+    );
+    return rows;
+  };
+
 /** Newest first. */
 export const listVersions =
   (database: Database): Configurations['listVersions'] =>

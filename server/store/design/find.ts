@@ -32,3 +32,8 @@ export const findRefusal =
   (database: Database): Designs['findRefusal'] =>
   (id) =>
     readRefusal(database.pool, id);
+
+export const findDesigns =
+  (database: Database): Designs['findDesigns'] =>
+  async (ids) =>
+    (await database.pool.query<DesignRecord>(`${DESIGN_FROM} where id = any($1::text[])`, [[...ids]])).rows;

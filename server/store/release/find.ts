@@ -82,16 +82,21 @@ export const findReleaseBySequence =
   (chipId, name, sequence) =>
     readRelease(database.pool, chipId, name, sequence);
 
-/** Where every release name of the chip points now. */
-export const listReleases =
-  (database: Database): Releases['listReleases'] =>
-  async (chipId) => {
+/** Where every release name of the chips points now. */
+export const listReleasesOfChips =
+  (database: Database): Releases['listReleasesOfChips'] =>
+  async (chipIds) => {
     const { rows } = await database.pool.query<Row>(
-      `${FROM} where e.chip_id = $1 and e.sequence = h.sequence order by e.name`,
-      [chipId],
+      `${FROM} where e.chip_id = any($1::uuid[]) and e.sequence = h.sequence order by e.name`,
+      [[...chipIds]],
     );
     return rows.map(releaseOf);
   };
+
+export const listReleases =
+  (database: Database): Releases['listReleases'] =>
+  (chipId) =>
+    listReleasesOfChips(database)([chipId]);
 
 /** Newest first. */
 export const listReleaseLog =
@@ -105,12 +110,17 @@ export const listReleaseLog =
     return pageOf(read.map(releaseOf), page.first, (row) => [row.sequence]);
   };
 
-export const listReleasesOfVersion =
-  (database: Database): Releases['listReleasesOfVersion'] =>
-  async (versionId) => {
+export const listReleasesOfVersions =
+  (database: Database): Releases['listReleasesOfVersions'] =>
+  async (versionIds) => {
     const { rows } = await database.pool.query<Row>(
-      `${FROM} where e.version_id = $1 order by e.created_at desc, e.name, e.sequence desc`,
-      [versionId],
+      `${FROM} where e.version_id = any($1::uuid[]) order by e.created_at desc, e.name, e.sequence desc`,
+      [[...versionIds]],
     );
     return rows.map(releaseOf);
   };
+
+export const listReleasesOfVersion =
+  (database: Database): Releases['listReleasesOfVersion'] =>
+  (versionId) =>
+    listReleasesOfVersions(database)([versionId]);
