@@ -14,6 +14,21 @@ export interface BlockRoutines {
   readonly heap: Float64Array;
   /** cos, sin ← of half·Ω, n values. */
   halfAngles(n: number, omega: number, half: number, cos: number, sin: number): void;
+  /**
+   * cos, sin (a block apart) ← of half·Ω for frequencies that stand almost evenly: those of the first (c0, s0) turned by
+   * a step table (cosStep, a block apart) and, to first order, by what Ω strays from Ω₀ + steps. Returns the greatest
+   * such distance; the caller discards the result where its square is not negligible.
+   */
+  rotate(
+    n: number,
+    omega: number,
+    steps: number,
+    half: number,
+    cosStep: number,
+    c0: number,
+    s0: number,
+    cos: number,
+  ): number;
   /** arm ← amplitude·e^(−jφ), given as cosine and sine parts. */
   fillArm(n: number, re: number, im: number, valueRe: number, valueIm: number): void;
   /** arm ← value·e^(−jδΩ) from the half-angle tables of δ. */
@@ -64,6 +79,8 @@ export function createPlainBlocks(): BlockRoutines {
         heap[sin + i] = Math.sin(angle);
       }
     },
+    rotate: (n, omega, steps, half, cosStep, c0, s0, cos) =>
+      plainRotate(heap, n, omega, steps, half, cosStep, c0, s0, cos),
     fillArm(n, re, im, valueRe, valueIm) {
       heap.fill(valueRe, re, re + n);
       heap.fill(valueIm, im, im + n);
@@ -84,6 +101,34 @@ export function createPlainBlocks(): BlockRoutines {
     combine: (n, arms, k, from, to) => plainCombine(heap, n, arms, k, from, to),
     combineSecond: (n, arms, k, from, to) => plainCombineSecond(heap, n, arms, k, from, to),
   };
+}
+
+function plainRotate(
+  heap: Float64Array,
+  n: number,
+  omega: number,
+  steps: number,
+  half: number,
+  cosStep: number,
+  c0: number,
+  s0: number,
+  cos: number,
+): number {
+  const block = BLOCK;
+  const first = heap[omega]!;
+  let worst = 0;
+  for (let i = 0; i < n; i++) {
+    const stray = heap[omega + i]! - first - heap[steps + i]!;
+    worst = Math.max(worst, Math.abs(stray));
+    const turn = stray * half;
+    const a = heap[cosStep + i]!;
+    const b = heap[cosStep + block + i]!;
+    const c = c0 * a - s0 * b;
+    const s = s0 * a + c0 * b;
+    heap[cos + i] = c - turn * s;
+    heap[cos + block + i] = s + turn * c;
+  }
+  return worst;
 }
 
 /** A lossless ring is −conj(B)/B: one product of all B, one division at the end. */

@@ -11,7 +11,7 @@ import { RING_CONSTANT, RING_STRIDE } from './elements.ts';
 const NARROW = 0.01;
 
 /** Most different delays for which half-angle tables fit the heap; circuits with more go frequency by frequency. */
-const MOST_TABLES = 24;
+const MOST_TABLES = 16;
 
 /** Positions in the heap. */
 export const HEAP = {
@@ -21,8 +21,12 @@ export const HEAP = {
   fieldsB: 9 * BLOCK,
   table: 13 * BLOCK,
   tables: MOST_TABLES,
-  couplers: (13 + 2 * MOST_TABLES) * BLOCK,
-  rings: (13 + 2 * MOST_TABLES) * BLOCK + 8,
+  /** The same tables for the angles of one block of an even grid, from 0. */
+  stepTable: (13 + 2 * MOST_TABLES) * BLOCK,
+  /** Those angles as Ω. */
+  steps: (13 + 4 * MOST_TABLES) * BLOCK,
+  couplers: (14 + 4 * MOST_TABLES) * BLOCK,
+  rings: (14 + 4 * MOST_TABLES) * BLOCK + 8,
 } as const;
 
 /** Most rings whose constants fit the heap. */
@@ -46,6 +50,8 @@ export interface Plan {
   readonly narrow: Int32Array;
   narrowCount: number;
   readonly windowSin: number;
+  /** Step of the even grid that is being evaluated; not a number where there is none. */
+  step: number;
 }
 
 export function createPlan(compiled: Compiled): Plan {
@@ -63,6 +69,7 @@ export function createPlan(compiled: Compiled): Plan {
     narrow: new Int32Array(rings),
     narrowCount: 0,
     windowSin: Math.sin(NARROW / 2),
+    step: Number.NaN,
   };
 }
 

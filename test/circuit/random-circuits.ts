@@ -65,11 +65,3 @@ export function randomOmegas(most = 7): fc.Arbitrary<Float64Array> {
   const omega = finite(-3 * Math.PI, 3 * Math.PI);
   return fc.array(omega, { minLength: 1, maxLength: most }).map((list) => Float64Array.from(list));
 }
-
-/** Σ 1/K over the rings of a circuit: how often its rounding is amplified at worst. */
-export function sumOfInverseCouplings(circuit: CircuitParameters): number {
-  let sum = 0;
-  for (const { arms } of circuit.cells)
-    for (const { rings } of arms) for (const { powerCrossCoupling: k } of rings) if (k > 0) sum += 1 / k;
-  return sum;
-}

@@ -1,9 +1,4 @@
-/**
- * The inner loops as WebAssembly SIMD, where the machine has it.
- *
- * What was measured before choosing, one circuit of 8 lossless rings × 4,001 frequencies, both outputs as complex fields:
- * see the table in src/circuit/routines.ts.
- */
+/** The inner loops as WebAssembly SIMD, where the machine has it. What was measured: src/circuit/routines.ts. */
 import type { BlockRoutines } from '../blocks.ts';
 import { KERNEL_BASE64 } from './binary.generated.ts';
 

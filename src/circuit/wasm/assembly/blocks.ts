@@ -81,6 +81,44 @@ export function halfAngles(n: i32, omega: i32, half: f64, cos: i32, sin: i32): v
   }
 }
 
+export function rotate(
+  n: i32,
+  omega: i32,
+  steps: i32,
+  half: f64,
+  cosStep: i32,
+  c0: f64,
+  s0: f64,
+  cos: i32,
+): f64 {
+  let x = (<usize>omega) << 3;
+  let away = (<usize>steps) << 3;
+  let step = (<usize>cosStep) << 3;
+  let to = (<usize>cos) << 3;
+  const end = x + ((<usize>n) << 3);
+  const first = v128.load_splat<f64>(x);
+  const h = f64x2.splat(half);
+  const cosStart = f64x2.splat(c0);
+  const sinStart = f64x2.splat(s0);
+  let worst = f64x2.splat(0.0);
+  while (x < end) {
+    const stray = f64x2.sub(f64x2.sub(v128.load(x), first), v128.load(away));
+    worst = f64x2.max(worst, f64x2.abs(stray));
+    const turn = f64x2.mul(stray, h);
+    const a = v128.load(step);
+    const b = v128.load(step + BLOCK_BYTES);
+    const c = f64x2.sub(f64x2.mul(cosStart, a), f64x2.mul(sinStart, b));
+    const s = f64x2.add(f64x2.mul(sinStart, a), f64x2.mul(cosStart, b));
+    v128.store(to, f64x2.sub(c, f64x2.mul(turn, s)));
+    v128.store(to + BLOCK_BYTES, f64x2.add(s, f64x2.mul(turn, c)));
+    x += 16;
+    away += 16;
+    step += 16;
+    to += 16;
+  }
+  return max(f64x2.extract_lane(worst, 0), f64x2.extract_lane(worst, 1));
+}
+
 export function fillArm(n: i32, re: i32, im: i32, valueRe: f64, valueIm: f64): void {
   let r = (<usize>re) << 3;
   let i = (<usize>im) << 3;
