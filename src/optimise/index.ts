@@ -1,9 +1,21 @@
 /** Minimisers, each a published method with its source. */
 export {
+  LEAST_SQUARES_DEFAULTS,
+  type LeastSquaresOptions,
+  type LeastSquaresProblem,
+  type LeastSquaresResult,
+  type LeastSquaresStop,
+  minimiseLeastSquares,
+} from './least-squares.ts';
+export {
   type MinimaxOptions,
   type MinimaxProblem,
   type MinimaxResult,
   type MinimaxStop,
   minimiseMaximum,
 } from './minimax.ts';
-export { type QuadraticProgramme, type QuadraticSolution, solveQuadraticProgramme } from './quadratic-programme.ts';
+export {
+  type QuadraticProgramme,
+  type QuadraticSolution,
+  solveQuadraticProgramme,
+} from './quadratic-programme.ts';

@@ -12,6 +12,9 @@ const PASSES_PER_CONSTRAINT = 4;
 /** A constraint counts as met within this share of the size of its own terms. */
 const MET = 1e-12;
 
+/** A constraint dependent on the active ones and missed by less than this is met as nearly as rounding allows. */
+const ROUNDING = 1e-9;
+
 /** A normal is taken as dependent on the active ones when what is left of it is smaller than this share. */
 const DEPENDENT = 1e-13;
 
@@ -101,11 +104,12 @@ function dropConstraint(set: ActiveSet, position: number): void {
 }
 
 /** Most violated constraint, measured against the size of its terms; −1 where all are met. */
-function mostViolated(problem: QuadraticProgramme, x: Float64Array): number {
+function mostViolated(problem: QuadraticProgramme, x: Float64Array, settled: Uint8Array): number {
   const n = x.length;
   let worst = -1;
   let worstSlack = -MET;
   for (let i = 0; i < problem.bounds.length; i++) {
+    if (settled[i] === 1) continue;
     let value = -problem.bounds[i]!;
     let size = Math.abs(value) + 1;
     for (let k = 0; k < n; k++) {
@@ -179,10 +183,13 @@ export function solveQuadraticProgramme(problem: QuadraticProgramme): QuadraticS
   const dual = new Float64Array(n);
   const maximumPasses = PASSES_PER_CONSTRAINT * (n + m) + PASSES_PER_CONSTRAINT;
   let passes = 0;
-  for (let next = mostViolated(problem, x); next >= 0; next = mostViolated(problem, x)) {
+  const settled = new Uint8Array(m);
+  for (;;) {
+    const next = mostViolated(problem, x, settled);
+    if (next < 0) break;
     const normal = problem.rows.subarray(next * n, next * n + n);
     set.multipliers[set.size] = 0;
-    for (let added = false; !added; ) {
+    for (let added = false; !added && settled[next] === 0; ) {
       if (++passes > maximumPasses) throw new NoConvergence('quadratic programme', passes, Number.NaN);
       directionsInto(set, normal, d, z, dual);
       let slope = 0;
@@ -196,6 +203,10 @@ export function solveQuadraticProgramme(problem: QuadraticProgramme): QuadraticS
       const full = slope > DEPENDENT * squared ? -slack / slope : Number.POSITIVE_INFINITY;
       const leaving = firstToLeave(set, dual);
       const step = Math.min(full, leaving.step);
+      if (step === Number.POSITIVE_INFINITY && -slack < ROUNDING) {
+        settled[next] = 1;
+        continue;
+      }
       if (step === Number.POSITIVE_INFINITY)
         throw new NoConvergence('quadratic programme (constraints contradict each other)', passes, -slack);
       if (full < Number.POSITIVE_INFINITY) for (let k = 0; k < n; k++) x[k] = x[k]! + step * z[k]!;
