@@ -173,6 +173,25 @@ describe('worker processes', () => {
     expect((await lab.waitFor(next.id, isFinal)).state).toBe('DONE');
   });
 
+  it('lose every connection to the database in the middle and nothing else: the design is stored, its death noticed', async () => {
+    const worker = await start({ TEST_HOLD_MS: '2000' });
+    const request = await lab.askNew();
+    await lab.waitFor(request.id, isUnderWay);
+    const client = await lab.store.pool.connect();
+    await client.query(
+      `select pg_terminate_backend(pid) from pg_stat_activity
+       where datname = current_database() and pid <> pg_backend_pid()`,
+    );
+    client.release();
+    expect((await lab.waitFor(request.id, isFinal)).state).toBe('DONE');
+    // It registered again: when it is killed now, another still learns of it.
+    const next = await lab.askNew();
+    await lab.waitFor(next.id, isUnderWay);
+    await worker.kill('SIGKILL');
+    await start();
+    expect((await lab.waitFor(next.id, isFinal)).state).toBe('DONE');
+  });
+
   it('share one queue: two workers each do a part, nothing twice', async () => {
     const both = await Promise.all([start({ TEST_HOLD_MS: '200' }), start({ TEST_HOLD_MS: '200' })]);
     const requests = await Promise.all(Array.from({ length: 12 }, () => lab.askNew()));
