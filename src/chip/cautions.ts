@@ -25,7 +25,7 @@ const LASER: Caution = {
  * Depth to which field errors of the phases, rad, fill a null of a balanced interferometer, dB: a phase error δ of an arm
  * or a coupler puts δ/2 of the field into the null; independent errors add as squares.
  */
-export function nullDepthDb(phaseErrorsRad: readonly number[]): number {
+function nullDepthDb(phaseErrorsRad: readonly number[]): number {
   const field = Math.hypot(...phaseErrorsRad) / 2;
   return 20 * Math.log10(field);
 }

@@ -35,17 +35,22 @@ export interface TwoByTwo {
   readonly m22: Complex;
 }
 
+/** asin√K, without the asin: near K = 1 that loses half the digits. */
+function angleOfCoupling(powerCrossCoupling: number): number {
+  return Math.atan2(Math.sqrt(powerCrossCoupling), Math.sqrt(1 - powerCrossCoupling));
+}
+
 /** [κ₁, κ₂] of the inner couplers, the stronger first, α₁ + α₂ ≤ π/2: the pair that leaves [minCoupling, maxCoupling]. */
 export function innerCouplings(coupler: Coupler): readonly [number, number] {
-  const sum = Math.asin(Math.sqrt(coupler.maxCoupling));
-  const difference = Math.asin(Math.sqrt(coupler.minCoupling));
+  const sum = angleOfCoupling(coupler.maxCoupling);
+  const difference = angleOfCoupling(coupler.minCoupling);
   return [Math.sin((sum + difference) / 2) ** 2, Math.sin((sum - difference) / 2) ** 2];
 }
 
 /** M(θ) of a tunable coupler. Sums that cancel are formed from K_min and K_max, so a dark entry is as exact as θ is. */
 function matrixAt(coupler: Coupler, thetaRad: number): TwoByTwo {
-  const sum = Math.asin(Math.sqrt(coupler.maxCoupling));
-  const difference = Math.asin(Math.sqrt(coupler.minCoupling));
+  const sum = angleOfCoupling(coupler.maxCoupling);
+  const difference = angleOfCoupling(coupler.minCoupling);
   const first = (sum + difference) / 2;
   const second = (sum - difference) / 2;
   const [s1, c1, s2, c2] = [Math.sin(first), Math.cos(first), Math.sin(second), Math.cos(second)];

@@ -40,6 +40,7 @@ function placePair(
   chip: ChipModel,
   options: FitOptions,
   run: Run,
+  section: number | null,
 ): PlannedCells {
   const { output, parkAtRad, carriedOn = output } = options;
   const joined = chip.join === 'BOTH';
@@ -48,18 +49,23 @@ function placePair(
     if (joined) return planTwoGuides(chip, index, index < run.first ? 'FIRST' : 'BOTH', parkAtRad);
     return planPassThrough(chip, index, portOf(chip, index, output), parkAtRad);
   };
-  const middle = planRun(chip, run, { ideal, carriedOn, port, section: null, parkAtRad });
+  const middle = planRun(chip, run, { ideal, carriedOn, port, section, parkAtRad });
   const before = Array.from({ length: run.first }, (_, index) => pass(index));
   const after = chip.cells.slice(run.last + 1).map((_, k) => pass(run.last + 1 + k));
   return together([...before, middle, ...after]);
 }
 
-function fitPair(ideal: InterferometerParameters, chip: ChipModel, options: FitOptions): PlannedCells {
+function fitPair(
+  ideal: InterferometerParameters,
+  chip: ChipModel,
+  options: FitOptions,
+  section: number | null,
+): PlannedCells {
   const last = chip.cells.length - 1;
   const runs = runsOf(chip).filter(
     (run) => !options.bothOutputs || chip.join === 'BOTH' || run.last === last,
   );
-  return cleanest(runs.map((run) => () => placePair(ideal, chip, options, run)));
+  return cleanest(runs.map((run) => () => placePair(ideal, chip, options, run, section)));
 }
 
 /**
@@ -71,7 +77,8 @@ function fitPair(ideal: InterferometerParameters, chip: ChipModel, options: FitO
  */
 export function fitToChip(ideal: IdealCircuit, chip: ChipModel, options: FitOptions): PlacedCircuit {
   const { output, parkAtRad, carriedOn = output } = options;
-  if (ideal.architecture === 'ALL_PASS_PAIR') return assemble(chip, fitPair(ideal.cell, chip, options).plans);
+  if (ideal.architecture === 'ALL_PASS_PAIR')
+    return assemble(chip, fitPair(ideal.cell, chip, options, null).plans);
   const [only, ...others] = ideal.cells;
   if (chip.join === 'BOTH' && others.length > 0)
     throw tooFewRings(
@@ -79,7 +86,7 @@ export function fitToChip(ideal: IdealCircuit, chip: ChipModel, options: FitOpti
       ideal.cells.length,
       1,
     );
-  if (chip.join === 'BOTH' && only) return assemble(chip, fitPair(only, chip, options).plans);
+  if (chip.join === 'BOTH' && only) return assemble(chip, fitPair(only, chip, options, 1).plans);
   const portOfCell = (index: number) => portOf(chip, index, output);
   const planned = fitSections(ideal.cells, chip, { carriedOn, parkAtRad, portOf: portOfCell });
   return assemble(chip, planned.plans);

@@ -25,7 +25,7 @@ const STRAIGHT: CouplerState = { powerCrossCoupling: 0, outPhase1Rad: 0, outPhas
 const phasor = (phaseRad: number): Complex => new Complex(Math.cos(phaseRad), -Math.sin(phaseRad));
 
 /** Two couplers in a row as one. */
-export function joinCouplers(first: CouplerState, second: CouplerState): CouplerState {
+function joinCouplers(first: CouplerState, second: CouplerState): CouplerState {
   const [k1, k2] = [Math.sqrt(first.powerCrossCoupling), Math.sqrt(second.powerCrossCoupling)];
   const [t1, t2] = [Math.sqrt(1 - first.powerCrossCoupling), Math.sqrt(1 - second.powerCrossCoupling)];
   const upper = phasor(first.outPhase1Rad + second.inPhase1Rad);

@@ -21,7 +21,7 @@ const TURN = 2 * Math.PI;
 const MAX_CONDITION = 1e6;
 
 /** So many of the best branch choices go into the exchange of turns. */
-const BRANCHES_TO_POLISH = 8;
+const BRANCHES_TO_POLISH = 4;
 
 /** mW of limit counted for each rad of an undriven element that a branch choice leaves wrong: it outweighs any heat. */
 const UNDRIVEN_PENALTY_MW = 1e9;

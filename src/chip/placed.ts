@@ -5,7 +5,10 @@ import { armOfRing } from './elements.ts';
 import type { ChipModel } from './model.ts';
 import type { Parked } from './setting.ts';
 
-/** What leaves a cell at one of its outputs. ARM: one arm of an all-pass pair that goes on into the next cell. */
+/**
+ * What leaves a cell at one of its outputs. COMPLEMENT: what filter or section do not pass; ARM: one arm of an all-pass
+ * pair that goes on into the next cell; NOTHING: a cell that passes the light to its other output.
+ */
 export type Carried = 'FILTER' | 'COMPLEMENT' | 'SECTION' | 'ARM' | 'PASSED_ON' | 'NOTHING';
 
 export interface PlacedRing {

@@ -147,8 +147,11 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
     const ends = index === run.last;
     const reach = (element: 'input' | 'output', value: number) =>
       withinReach(`${cell.name}.${element}.coupling`, couplerOf(cell, element), value);
-    const [filter, other] = request.section === null ? ['FILTER', 'COMPLEMENT'] : ['SECTION', 'NOTHING'];
-    const carries = { OUT1: other, OUT2: other, [request.port]: filter } as CellPlan['carries'];
+    const carries = {
+      OUT1: 'COMPLEMENT',
+      OUT2: 'COMPLEMENT',
+      [request.port]: request.section === null ? 'FILTER' : 'SECTION',
+    } as CellPlan['carries'];
     plans.push({
       section: request.section,
       inputCoupling: reach('input', index === run.first ? variant.inputCoupling : 0),

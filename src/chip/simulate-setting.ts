@@ -42,7 +42,7 @@ function unfoldedCell(chip: ChipModel, index: number, phaseOf: PhaseOf): Unfolde
 }
 
 /** The circuit at given phases of the driven elements, in channel order (rad), with the chip's losses. */
-export function circuitOfPhases(phasesRad: ArrayLike<number>, chip: ChipModel): CircuitParameters {
+function circuitOfPhases(phasesRad: ArrayLike<number>, chip: ChipModel): CircuitParameters {
   const phases = new Map(chip.channels.map((channel, i) => [channel.drives, phasesRad[i]!]));
   const phaseOf = (path: string) => phases.get(path) ?? 0;
   const unfolded = chip.cells.map((_, index) => unfoldedCell(chip, index, phaseOf));

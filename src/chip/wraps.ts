@@ -35,6 +35,8 @@ export interface WrapProblem {
   readonly leastRad: Float64Array;
   /** What one turn more of a heater adds to the total, mW. */
   readonly totalPerTurnMw: Float64Array;
+  /** Off-diagonals of W ≤ 0 and no turn lowers the total: the least turns are then the least heat, without exchange. */
+  readonly leastIsBest: boolean;
 }
 
 export function wrapProblem(
@@ -52,7 +54,9 @@ export function wrapProblem(
       leastRad[i]! += entry * (entry >= 0 ? floorMw[j]! : limitMw[j]!);
       totalPerTurnMw[j]! += TURN * inverse[i * m + j]!;
     }
-  return { gain, inverse, floorMw, limitMw, leastRad, totalPerTurnMw };
+  const leastIsBest =
+    totalPerTurnMw.every((turn) => turn >= 0) && inverse.every((w, k) => k % (m + 1) === 0 || w <= 0);
+  return { gain, inverse, floorMw, limitMw, leastRad, totalPerTurnMw, leastIsBest };
 }
 
 /** What a choice of turns costs. */
@@ -182,10 +186,12 @@ function scanExchanges(problem: WrapProblem, from: WrapSolution, best: Scan): vo
 }
 
 /**
- * Exchanges single turns, pairs and triples while limits are met better or the total falls. Returns a solution no
- * exchange improves. Cost O(m³) tries a pass; a try costs O(m) only where it lowers the total or limits are missed.
+ * From the least turns: exchanges single turns, pairs and triples while limits are met better or the total falls.
+ * Returns a solution no exchange improves. Cost O(m³) tries a pass; a try costs O(m) only where it lowers the total or
+ * limits are missed.
  */
 export function exchangeTurns(problem: WrapProblem, start: WrapSolution): WrapSolution {
+  if (problem.leastIsBest && start.violationMw === 0) return start;
   const m = start.turns.length;
   let current = start;
   for (let step = 0; step < MAX_EXCHANGES; step++) {

@@ -18,6 +18,14 @@ export function invent(seed: number): () => number {
   };
 }
 
+/** Evenly spread over an interval, its ends now and then: `fc.double` spreads over bit patterns, most of them near 0. */
+export function spread(min: number, max: number): fc.Arbitrary<number> {
+  const within = fc
+    .noBias(fc.integer({ min: 0, max: 2 ** 31 - 1 }))
+    .map((n) => min + ((max - min) * n) / 2 ** 31);
+  return fc.oneof({ weight: 9, arbitrary: within }, { weight: 1, arbitrary: fc.constantFrom(min, max) });
+}
+
 export function tunable(element: string, change: Partial<Coupler> = {}): Coupler {
   return { element, tunable: true, minCoupling: 0, maxCoupling: 1, heatedArm: 'UPPER', ...change };
 }
@@ -36,7 +44,7 @@ export interface CellChoice {
   readonly couplers?: readonly Coupler[];
 }
 
-export function cellOf(choice: CellChoice): InterferometerCell {
+function cellOf(choice: CellChoice): InterferometerCell {
   const rings = choice.ringsPerArm[0] + choice.ringsPerArm[1];
   const names = ['input', 'output', ...Array.from({ length: rings }, (_, k) => `ring${k + 1}`)];
   const special = choice.couplers ?? [];

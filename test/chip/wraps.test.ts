@@ -8,12 +8,13 @@ import { exchangeTurns, leastTurns, type WrapProblem, wrapProblem } from '../../
 import { invent } from './invented-chips.ts';
 
 const TURN = 2 * Math.PI;
-const HEATERS = 6;
-const CASES = 100;
+const HEATERS = 8;
+const CASES = 200;
 
 /** mW; powers are differences of a few sums near 50 mW. */
 const ROUNDING_MW = 1e-9;
 
+/** Crosstalk between neighbours only: the inverse then has positive entries two places off the diagonal. */
 function inventProblem(seed: number, crosstalk: number): { problem: WrapProblem; phases: Float64Array } {
   const random = invent(seed);
   random();
@@ -22,7 +23,8 @@ function inventProblem(seed: number, crosstalk: number): { problem: WrapProblem;
   for (let i = 0; i < m; i++) {
     const perMw = TURN / (40 + 20 * random());
     for (let j = 0; j < m; j++)
-      gain[i * m + j] = perMw * (i === j ? 1 : (crosstalk * (0.5 + 0.5 * random())) / Math.abs(i - j));
+      gain[i * m + j] =
+        perMw * (i === j ? 1 : Math.abs(i - j) === 1 ? crosstalk * (0.5 + 0.5 * random()) : 0);
   }
   const floorMw = Float64Array.from({ length: m }, () => 4);
   const limitMw = Float64Array.from({ length: m }, () => 150);
@@ -75,14 +77,19 @@ function certifiedLeast(problem: WrapProblem, phases: Float64Array, best: number
   return certified;
 }
 
-function excesses(crosstalk: number): number[] {
+/** Heat over the certified least, of the least turns alone and after the exchange. */
+function excesses(crosstalk: number): { readonly least: number; readonly exchanged: number }[] {
   return Array.from({ length: CASES }, (_, k) => {
     const { problem, phases } = inventProblem(1000 + k, crosstalk);
-    const found = exchangeTurns(problem, leastTurns(problem, phases));
+    const least = leastTurns(problem, phases);
+    const found = exchangeTurns(problem, least);
     expect(found.violationMw).toBe(0);
-    return found.totalMw / certifiedLeast(problem, phases, found.totalMw) - 1;
+    const certified = certifiedLeast(problem, phases, least.totalMw);
+    return { least: least.totalMw / certified - 1, exchanged: found.totalMw / certified - 1 };
   });
 }
+
+const isOff = (excess: number) => excess > 1e-9;
 
 describe('whole turns of heaters', () => {
   it('meet every phase and every floor [property]', () => {
@@ -108,15 +115,20 @@ describe('whole turns of heaters', () => {
     });
   });
 
-  it('take the certified least heat in at least 97 of 100 cases at 5 % crosstalk [cross-check]', () => {
-    expect(excesses(0.05).filter((excess) => excess > 1e-9).length).toBeLessThanOrEqual(3);
+  it('take the certified least heat in 99 of 100 cases at 5 % crosstalk [cross-check]', () => {
+    const cases = excesses(0.05);
+    expect(cases.filter(({ exchanged }) => isOff(exchanged)).length).toBeLessThanOrEqual(CASES / 100);
   });
 
-  it('stay within 6 % of the certified least heat at 10 % crosstalk [cross-check]', () => {
-    expect(Math.max(...excesses(0.1))).toBeLessThan(0.06);
+  it('stay within 6 % of the certified least heat at 10 % crosstalk, and gain by the exchange [cross-check]', () => {
+    const cases = excesses(0.1);
+    expect(Math.max(...cases.map(({ exchanged }) => exchanged))).toBeLessThan(0.06);
+    const off = (kind: 'least' | 'exchanged') => cases.filter((one) => isOff(one[kind])).length;
+    expect(off('least')).toBeGreaterThan(0);
+    expect(off('exchanged')).toBeLessThan(off('least'));
   });
 
-  it('trade turns between heaters where a limit would be passed', () => {
+  it('trade turns between heaters where a limit would be passed [property]', () => {
     // Two heaters, the first just beyond its limit by crosstalk alone: more of the second lowers it.
     const gain = Float64Array.from([0.125, 0.02, 0.005, 0.125]);
     const floorMw = Float64Array.from([4, 4]);
