@@ -52,7 +52,12 @@ function clearAbandoned(folder: string): void {
 }
 
 /** Makes the cluster aside and renames it into place whole: a kill in between leaves nothing half-made, and of two first starts one wins. */
-export async function initialise(binaries: Binaries, folder: string, owner: Owner): Promise<void> {
+export async function initialise(
+  binaries: Binaries,
+  folder: string,
+  owner: Owner,
+  durable: boolean,
+): Promise<void> {
   const cluster = clusterOf(folder);
   if (existsSync(join(cluster, 'PG_VERSION'))) return;
   clearAbandoned(folder);
@@ -71,7 +76,12 @@ export async function initialise(binaries: Binaries, folder: string, owner: Owne
       '--locale-provider=builtin',
       '--builtin-locale=C.UTF-8',
     ];
-    await run(binaries.initdb, ['-D', made, ...access, ...locale], owner, aside);
+    await run(
+      binaries.initdb,
+      ['-D', made, ...access, ...locale, ...(durable ? [] : ['--no-sync'])],
+      owner,
+      aside,
+    );
     renameSync(secret, join(made, PASSWORD_FILE));
     try {
       renameSync(made, cluster);

@@ -1,4 +1,6 @@
+import { existsSync } from 'node:fs';
 import { createServer } from 'node:net';
+import { join } from 'node:path';
 import { setTimeout as sleep } from 'node:timers/promises';
 import { launchControlled } from './control.ts';
 import { clusterOf, initialise, readPassword } from './initialise.ts';
@@ -46,7 +48,8 @@ export async function startEmbedded(options: EmbeddedOptions): Promise<Embedded>
   const owner = findOwner();
   const binaries = await placeBinaries(owner);
   const folder = placeData(options.folder, owner, options.logger);
-  await initialise(binaries, folder, owner);
+  const durable = options.durable ?? true;
+  await initialise(binaries, folder, owner, durable);
   const cluster = clusterOf(folder);
   const password = readPassword(folder);
   const controlled =
@@ -63,7 +66,7 @@ export async function startEmbedded(options: EmbeddedOptions): Promise<Embedded>
       binaries,
       folder: cluster,
       port,
-      settings: settingsOf(options.durable ?? true),
+      settings: settingsOf(durable),
       owner,
     };
     const launched = await (controlled ? launchControlled(launch) : launchWrapped(launch));
@@ -72,6 +75,9 @@ export async function startEmbedded(options: EmbeddedOptions): Promise<Embedded>
       return { url: urlOf(port, password), port, folder, adopted: false, stop: launched.stop };
     }
     log = launched.log;
+    // Without a predecessor of ours that is still ending, the port is somebody else's and stays so.
+    const isTaken = options.port !== undefined && /address already in use/i.test(log);
+    if (isTaken && !existsSync(join(cluster, 'postmaster.pid'))) break;
     await sleep(PAUSE_MS);
   }
   throw new Error(`PostgreSQL did not start in ${folder}: ${log}`);

@@ -1,5 +1,6 @@
 /** The library in PostgreSQL: the only code that talks to it. */
 
+export { BackupUnreadable, backup, restore } from './backup/index.ts';
 export type { StoreOptions } from './create-store.ts';
 export { createStore } from './create-store.ts';
 export { migrate } from './migrate.ts';
