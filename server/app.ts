@@ -16,6 +16,7 @@ import {
   registerAccess,
   registerBodies,
   registerDocument,
+  registerDraining,
   registerHeaders,
   registerMethods,
   registerMetrics,
@@ -77,6 +78,7 @@ export async function buildApp(deps: AppDeps): Promise<FastifyInstance> {
 
   registerProblems(app);
   registerHeaders(app);
+  registerDraining(app, waiting);
   const metrics = registerMetrics(app, store, waiting);
   const routes = registerAccess(app, admit);
   registerBodies(app);
@@ -88,7 +90,6 @@ export async function buildApp(deps: AppDeps): Promise<FastifyInstance> {
     registerPages(app);
   });
 
-  app.addHook('preClose', async () => waiting.drain());
   await app.ready();
   return app;
 }

@@ -41,4 +41,10 @@ export function registerHeaders(app: FastifyInstance): void {
     }
     done();
   });
+  // The framework adds a charset; RFC 8259 section 11 knows none.
+  app.addHook('onSend', (_request, reply, payload, done) => {
+    const type = reply.getHeader('content-type');
+    if (type === 'application/json; charset=utf-8') reply.header('content-type', 'application/json');
+    done(null, payload);
+  });
 }

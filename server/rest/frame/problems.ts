@@ -53,11 +53,14 @@ export function writeProblem(
 ): FastifyReply {
   // What a representation would have carried does not describe the problem that is sent instead.
   for (const name of ['etag', 'content-disposition', 'content-location']) reply.removeHeader(name);
-  return reply
-    .code(problem.status)
-    .headers(headers)
-    .header('content-type', PROBLEM_TYPE)
-    .send(JSON.stringify(problem));
+  return (
+    reply
+      .code(problem.status)
+      .headers(headers)
+      .header('content-type', PROBLEM_TYPE)
+      // As bytes, for to a text of a JSON type the framework adds a charset.
+      .send(Buffer.from(JSON.stringify(problem)))
+  );
 }
 
 /** What Node's parser refuses before there is a request: bytes that are not HTTP, header sections too long. */

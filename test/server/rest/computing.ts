@@ -15,12 +15,27 @@ export interface Computing {
   fail(): Promise<void>;
 }
 
-/** Starts the oldest computation that is queued. */
-export async function startNext(store: Store): Promise<Computing> {
+async function oldestQueued(store: Store): Promise<string | undefined> {
   const { rows } = await store.pool.query<{ id: string }>(
     `select id from computation where state = 'QUEUED' order by id limit 1`,
   );
-  const id = rows[0]?.id;
+  return rows[0]?.id;
+}
+
+export const isAnythingQueued = async (store: Store): Promise<boolean> =>
+  (await oldestQueued(store)) !== undefined;
+
+/** A request sent a moment ago is queued by then, even on a busy machine. */
+const ARRIVAL_MS = 10_000;
+
+/** Starts the oldest computation that is queued, or the next one to come. */
+export async function startNext(store: Store): Promise<Computing> {
+  const end = performance.now() + ARRIVAL_MS;
+  let id = await oldestQueued(store);
+  while (id === undefined && performance.now() < end) {
+    await new Promise((resolve) => setTimeout(resolve, 20));
+    id = await oldestQueued(store);
+  }
   const started = id === undefined ? null : await store.startComputation(id);
   if (!id || !started) throw new Error('nothing is queued');
   const { attempt, canonical, model } = started;
