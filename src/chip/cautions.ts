@@ -61,12 +61,16 @@ export interface CautionInput {
   /** What rounding to driver steps leaves between wanted and set phases, rad. */
   readonly phaseErrorsRad: readonly number[];
   readonly undriven: readonly string[];
+  /** Rings that light reaches and that are not decoupled. */
+  readonly coupledRings: readonly string[];
 }
 
 export function cautionsOf(input: CautionInput): Caution[] {
   const depthDb = nullDepthDb(input.phaseErrorsRad);
   const coupled = input.placed.cells.flatMap((cell) =>
-    cell.rings.filter((ring) => ring.parked && ring.powerCrossCoupling > 0).map((ring) => ring.element),
+    cell.rings
+      .filter((ring) => ring.parked && input.coupledRings.includes(ring.element))
+      .map((ring) => ring.element),
   );
   return [
     LASER,

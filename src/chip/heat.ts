@@ -103,11 +103,16 @@ function liftOn({ plusRad, changeRad }: Lifts, branches: Uint8Array): Float64Arr
   return lift;
 }
 
+export interface LeastHeat extends BranchSolution {
+  /** The same branches with every floor kept, whatever the limits say: where limits cannot be met, what they would have to be. */
+  readonly floorsKept: WrapSolution;
+}
+
 /**
  * Coupler branches, turns and powers of the least total heat found. Few couplers: every branch choice; the best go through
  * the exchange of turns. Throws a Refusal where no branch choice leaves an undriven element where it has to be.
  */
-export function leastHeat(heating: Heating, targets: ThermalTargets, chip: ChipModel): BranchSolution {
+export function leastHeat(heating: Heating, targets: ThermalTargets, chip: ChipModel): LeastHeat {
   const { demands, resting, problem } = heating;
   const lifts = liftsOf(demands, targets.branches, chip);
   const penalise = (solution: WrapSolution, branches: Uint8Array): WrapSolution => {
@@ -119,7 +124,7 @@ export function leastHeat(heating: Heating, targets: ThermalTargets, chip: ChipM
     penalise(leastTurns(problem, liftOn(lifts, branches)), branches);
   const polished = searchBranches(targets.branches, evaluate, BRANCHES_TO_POLISH).map(({ branches }) => {
     const start = leastTurns(problem, liftOn(lifts, branches));
-    return { branches, solution: penalise(exchangeTurns(problem, start), branches) };
+    return { branches, solution: penalise(exchangeTurns(problem, start), branches), floorsKept: start };
   });
   const best = polished.reduce((a, b) => (isBetter(b.solution, a.solution) ? b : a));
   for (const demand of resting) {

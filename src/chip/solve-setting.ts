@@ -2,46 +2,37 @@
 import { Refusal } from '../errors.ts';
 import { cautionsOf } from './cautions.ts';
 import { channelLimit, currentMa, powerMw, roundToStep } from './currents.ts';
-import { type Heating, heatingOf, leastHeat, offTurn } from './heat.ts';
+import { type Heating, heatingOf, type LeastHeat, leastHeat, offTurn } from './heat.ts';
 import { phasesFromPowers } from './heaters.ts';
 import type { ChipModel } from './model.ts';
 import type { PlacedCircuit } from './placed.ts';
 import type { ChannelSetting, ChannelState, Setting } from './setting.ts';
 import { thermalTargets, wantedPhase } from './targets.ts';
-import type { WrapSolution } from './wraps.ts';
 
 const TURN = 2 * Math.PI;
 
-function checkLimits(heating: Heating, solution: WrapSolution, chip: ChipModel): void {
-  const { demands, problem } = heating;
-  let worst = -1;
-  let excess = 0;
-  if (solution.violationMw > 0)
-    solution.powersMw.forEach((power, i) => {
-      const over = (power - problem.limitMw[i]!) / problem.limitMw[i]!;
-      if (over > excess) {
-        worst = i;
-        excess = over;
-      }
-    });
-  if (worst >= 0) {
-    const channel = chip.channels[demands[worst]!.channel]!;
-    const limit = channelLimit(channel);
-    const byPower = limit.kind === 'CHANNEL_POWER';
-    const needed = currentMa(solution.powersMw[worst]!, channel.resistanceOhm);
-    throw new Refusal({
-      code: 'SETTING_UNREACHABLE',
-      limit: limit.kind,
-      detail:
-        `Channel ${channel.channel} (${channel.drives}) would need ${needed.toFixed(4)} mA, ` +
-        `${solution.powersMw[worst]!.toFixed(3)} mW; its ${byPower ? 'power' : 'current'} limit allows ` +
-        `${limit.currentMa.toFixed(4)} mA.`,
-      channel: channel.channel,
-      element: channel.drives,
-      given: byPower ? solution.powersMw[worst]! : needed,
-      allowed: byPower ? channel.powerLimitMw : channel.currentLimitMa,
-    });
-  }
+/** Where not all limits can be met: refuses with the channel that would be furthest beyond its own. */
+function checkLimits(heating: Heating, { solution, floorsKept }: LeastHeat, chip: ChipModel): void {
+  if (solution.violationMw === 0) return;
+  const { limitMw } = heating.problem;
+  const beyond = Array.from(floorsKept.powersMw, (power, i) => power / limitMw[i]!);
+  const worst = beyond.indexOf(Math.max(...beyond));
+  const needMw = floorsKept.powersMw[worst]!;
+  const channel = chip.channels[heating.demands[worst]!.channel]!;
+  const limit = channelLimit(channel);
+  const byPower = limit.kind === 'CHANNEL_POWER';
+  const needMa = currentMa(needMw, channel.resistanceOhm);
+  throw new Refusal({
+    code: 'SETTING_UNREACHABLE',
+    limit: limit.kind,
+    detail:
+      `Channel ${channel.channel} (${channel.drives}) would need ${needMa.toFixed(4)} mA, ${needMw.toFixed(3)} mW; ` +
+      `its ${byPower ? 'power' : 'current'} limit allows ${limit.currentMa.toFixed(4)} mA.`,
+    channel: channel.channel,
+    element: channel.drives,
+    given: byPower ? needMw : needMa,
+    allowed: byPower ? channel.powerLimitMw : channel.currentLimitMa,
+  });
 }
 
 function checkTotal(chip: ChipModel, totalPowerMw: number): void {
@@ -114,10 +105,12 @@ function roundingErrors(
 export function solveSetting(placed: PlacedCircuit, chip: ChipModel): Setting {
   const targets = thermalTargets(placed, chip);
   const heating = heatingOf(targets, chip);
-  const { branches, solution } = leastHeat(heating, targets, chip);
-  checkLimits(heating, solution, chip);
+  const least = leastHeat(heating, targets, chip);
+  checkLimits(heating, least, chip);
+  const { branches, solution } = least;
   const heatMw = new Float64Array(chip.channels.length);
   heating.demands.forEach((demand, i) => {
+    // A floor of 0 may be missed by rounding; limits and floors themselves have been checked.
     heatMw[demand.channel] = Math.max(0, solution.powersMw[i]!);
   });
   const used = new Set(heating.demands.map((demand) => demand.channel));
@@ -125,7 +118,15 @@ export function solveSetting(placed: PlacedCircuit, chip: ChipModel): Setting {
   const totalPowerMw = channels.reduce((sum, channel) => sum + channel.powerMw, 0);
   checkTotal(chip, totalPowerMw);
   const phaseErrorsRad = roundingErrors(heating, branches, channels, placed);
-  const { undriven } = targets;
-  const cautions = cautionsOf({ chip, placed, channels, totalPowerMw, phaseErrorsRad, undriven });
+  const { undriven, coupledRings } = targets;
+  const cautions = cautionsOf({
+    chip,
+    placed,
+    channels,
+    totalPowerMw,
+    phaseErrorsRad,
+    undriven,
+    coupledRings,
+  });
   return { channels, totalPowerMw, parked: placed.parked, cautions };
 }

@@ -45,6 +45,8 @@ export interface ThermalTargets {
   readonly branches: number;
   /** Paths that the circuit relies on and no channel drives. */
   readonly undriven: readonly string[];
+  /** Rings (`cell1.ring2`) that light reaches and that are not decoupled. */
+  readonly coupledRings: readonly string[];
 }
 
 interface PlacedCoupler {
@@ -101,6 +103,7 @@ interface Walk {
   readonly elements: ReadonlyMap<string, ChipElement>;
   readonly demands: PhaseDemand[];
   readonly undriven: string[];
+  readonly coupledRings: string[];
   branches: number;
   /** Which of the two guides carry light. */
   lit: readonly [boolean, boolean];
@@ -200,6 +203,7 @@ function passRing(
   const sign = arm === 1 ? 1 : -1;
   extend(walk, { parts: [partOf(coupler, -sign, ['outPhase1Rad', 'inPhase1Rad'])] });
   if (powerCrossCoupling <= NO_COUPLING) return;
+  walk.coupledRings.push(`${walk.chip.cells[cell]!.name}.${name}`);
   const path = `${walk.chip.cells[cell]!.name}.${name}.phase`;
   const { channel } = walk.elements.get(path)!;
   if (1 - powerCrossCoupling <= FULL_COUPLING_SLACK) {
@@ -255,6 +259,7 @@ export function thermalTargets(placed: PlacedCircuit, chip: ChipModel): ThermalT
     elements: new Map(listElements(chip).map((element) => [element.path, element])),
     demands: [],
     undriven: [],
+    coupledRings: [],
     branches: 0,
     lit: [true, false],
     segment: null,
@@ -262,7 +267,8 @@ export function thermalTargets(placed: PlacedCircuit, chip: ChipModel): ThermalT
   const all = chip.cells.map((_, index) => index);
   if (chip.join === 'BOTH') passCells(walk, placed, all);
   else for (const cell of all) passCells(walk, placed, [cell]);
-  return { demands: walk.demands, branches: walk.branches, undriven: walk.undriven };
+  const { demands, branches, undriven, coupledRings } = walk;
+  return { demands, branches, undriven, coupledRings };
 }
 
 /** The phase a demand asks for on the given branches (0: +θ, 1: −θ), rad. */

@@ -175,6 +175,42 @@ describe('limits', () => {
     expect(byPower.given as number).toBeGreaterThan(18);
   });
 
+  it('of a floor of 0 let heaters rest, and cost less [property]', () => {
+    const free = { ...sixRingChip, heaterFloorRad: 0 };
+    const setting = solveSetting(placed, free);
+    expect(setting.channels.every(({ currentMa }) => currentMa >= 0)).toBe(true);
+    expect(setting.totalPowerMw).toBeLessThan(solveSetting(placed, sixRingChip).totalPowerMw);
+    expectRoundTrip(placed, free);
+  });
+
+  it('of crosstalk that cannot be undone are refused [cross-check]', () => {
+    // Source: equal rows, determinant 0.
+    const same = sixRingChip.channels.flatMap(() => sixRingChip.channels.map(() => 1));
+    expect(refusal(() => solveSetting(placed, { ...sixRingChip, crosstalk: same })).code).toBe(
+      'SETTING_UNREACHABLE',
+    );
+  });
+
+  it('make a setting that is right, or none: never a heater clipped [property]', () => {
+    let refused = 0;
+    for (let seed = 1; seed <= 40; seed++) {
+      const model = inventChip({ cells: [{ name: 'main', ringsPerArm: [3, 3] }], seed, crosstalk: 0.1 });
+      const chip = withChannels(ideally(model), { powerLimitMw: 40 + seed / 2 });
+      const here = pairOn('ellip5', chip);
+      try {
+        expectRoundTrip(here, chip);
+      } catch (reason) {
+        if (!(reason instanceof Refusal)) throw reason;
+        refused++;
+        expect(reason.details).toMatchObject({ code: 'SETTING_UNREACHABLE', limit: 'CHANNEL_POWER' });
+        expect(reason.details.given as number).toBeGreaterThan(reason.details.allowed as number);
+      }
+    }
+    // Limits from below to above P_2π: some can be met, some cannot.
+    expect(refused).toBeGreaterThan(0);
+    expect(refused).toBeLessThan(40);
+  });
+
   it('of all heaters together are refused with the least that was found [cross-check]', () => {
     const { totalPowerMw } = solveSetting(placed, sixRingChip);
     const refused = refusal(() =>
@@ -198,6 +234,26 @@ describe('limits', () => {
     expect(codes(tight)).toContain('NEAR_CURRENT_LIMIT');
     const hot = solveSetting(placed, { ...sixRingChip, totalPowerLimitMw: setting.totalPowerMw * 1.1 });
     expect(codes(hot)).toContain('HIGH_TOTAL_POWER');
+  });
+
+  it('of parking are pointed out where light meets a ring that cannot decouple, and only there [cross-check]', () => {
+    const leaky = (name: string, ...rings: number[]) => ({
+      name,
+      ringsPerArm: [3, 3] as const,
+      couplers: rings.map((k) => tunable(`ring${k}`, { minCoupling: 0.02 })),
+    });
+    const all = inventChip({ cells: [leaky('main', 1, 2, 3, 4, 5, 6)], seed: 3 });
+    expect(codes(solveSetting(pairOn('butter3_half', all), all))).toContain('PARKED_RING_COUPLED');
+    // Rings 4 to 6 of the first cell are on its lower arm, which stays dark while the light passes by the upper one.
+    const front = inventChip({
+      cells: [leaky('front', 4, 5, 6), { name: 'main', ringsPerArm: [3, 3] }],
+      seed: 3,
+    });
+    const passed = solveSetting(pairOn('ellip5', front), front);
+    expect(passed.parked[0]).toMatchObject({ element: 'front' });
+    expect(codes(passed)).not.toContain('PARKED_RING_COUPLED');
+    const lower = passed.channels.filter(({ drives }) => /^front\.ring[456]\./.test(drives));
+    expect(lower.every(({ state, currentMa }) => state === 'UNUSED' && currentMa === 0)).toBe(true);
   });
 
   it('of an element without a heater are refused by name, unless it rests where it has to [cross-check]', () => {
