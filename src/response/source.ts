@@ -4,7 +4,6 @@ import {
   createDelayBuffers,
   createFieldBuffers,
   createKernel,
-  type DelayBuffers,
   evaluateInto,
   evaluateWithGroupDelayInto,
   type FieldBuffers,
@@ -29,10 +28,8 @@ export interface FieldSource {
   readonly turns: number;
   /** Complex field at every offset, GHz. */
   fieldInto(offsetGhz: Float64Array, re: Float64Array, im: Float64Array): void;
-  /** Group delay, ps. Not a number where the field vanishes. */
-  groupDelayInto(offsetGhz: Float64Array, ps: Float64Array): void;
-  /** Slope of the group delay dτ/dν, ps/GHz. */
-  groupDelaySlopeInto(offsetGhz: Float64Array, psPerGhz: Float64Array): void;
+  /** Group delay, ps, and where asked for its slope dτ/dν, ps/GHz. Not a number where the field vanishes. */
+  groupDelayInto(offsetGhz: Float64Array, ps: Float64Array, slopePsPerGhz?: Float64Array): void;
 }
 
 /** Unit delay in ps. */
@@ -79,16 +76,6 @@ export function sourceOfCircuit(circuit: CircuitParameters, output: OutputPort, 
       ? { out1Re: re, out1Im: im, out2Re: other, out2Im: other }
       : { out1Re: other, out1Im: other, out2Re: re, out2Im: im };
   };
-  const delaysAt = (offsetGhz: Float64Array): DelayBuffers => {
-    const delays = createDelayBuffers(offsetGhz.length);
-    evaluateWithGroupDelayInto(
-      kernel,
-      omegaOf(offsetGhz, fsrGhz),
-      createFieldBuffers(offsetGhz.length),
-      delays,
-    );
-    return delays;
-  };
   const slopeScale = (unitDelayPs(fsrGhz) * 2 * Math.PI) / fsrGhz;
   return {
     fsrGhz,
@@ -96,15 +83,15 @@ export function sourceOfCircuit(circuit: CircuitParameters, output: OutputPort, 
     turns: turnsOf(circuit),
     fieldInto: (offsetGhz, re, im) =>
       evaluateInto(kernel, omegaOf(offsetGhz, fsrGhz), fieldsOf(offsetGhz.length, re, im)),
-    groupDelayInto(offsetGhz, ps) {
-      const { delay1, delay2 } = delaysAt(offsetGhz);
-      const delay = first ? delay1 : delay2;
-      for (let i = 0; i < ps.length; i++) ps[i] = delay[i]! * unitDelayPs(fsrGhz);
-    },
-    groupDelaySlopeInto(offsetGhz, psPerGhz) {
-      const { slope1, slope2 } = delaysAt(offsetGhz);
-      const slope = first ? slope1 : slope2;
-      for (let i = 0; i < psPerGhz.length; i++) psPerGhz[i] = slope[i]! * slopeScale;
+    groupDelayInto(offsetGhz, ps, slopePsPerGhz) {
+      const n = offsetGhz.length;
+      const delays = createDelayBuffers(n);
+      evaluateWithGroupDelayInto(kernel, omegaOf(offsetGhz, fsrGhz), createFieldBuffers(n), delays);
+      const delay = first ? delays.delay1 : delays.delay2;
+      for (let i = 0; i < n; i++) ps[i] = delay[i]! * unitDelayPs(fsrGhz);
+      if (slopePsPerGhz === undefined) return;
+      const slope = first ? delays.slope1 : delays.slope2;
+      for (let i = 0; i < n; i++) slopePsPerGhz[i] = slope[i]! * slopeScale;
     },
   };
 }
@@ -137,18 +124,17 @@ export function sourceOfTransferFunction(filter: TransferFunction, fsrGhz: numbe
     })),
     turns: filter.poles.length,
     fieldInto: (offsetGhz, re, im) => evaluateFilterInto(filter, omegaOf(offsetGhz, fsrGhz), re, im),
-    groupDelayInto(offsetGhz, ps) {
-      filterDelayInto(filter, omegaOf(offsetGhz, fsrGhz), ps);
-      for (let i = 0; i < ps.length; i++) ps[i]! *= unitDelayPs(fsrGhz);
-    },
-    groupDelaySlopeInto(offsetGhz, psPerGhz) {
+    groupDelayInto(offsetGhz, ps, slopePsPerGhz) {
       const omega = omegaOf(offsetGhz, fsrGhz);
+      filterDelayInto(filter, omega, ps);
+      for (let i = 0; i < ps.length; i++) ps[i]! *= unitDelayPs(fsrGhz);
+      if (slopePsPerGhz === undefined) return;
       const scale = (unitDelayPs(fsrGhz) * 2 * Math.PI) / fsrGhz;
       for (let i = 0; i < omega.length; i++) {
         let slope = 0;
         for (const { radius, angle } of poles) slope += delaySlopeOf(radius, angle, omega[i]!);
         for (const { radius, angle } of zeros) slope -= delaySlopeOf(radius, angle, omega[i]!);
-        psPerGhz[i] = slope * scale;
+        slopePsPerGhz[i] = slope * scale;
       }
     },
   };

@@ -22,8 +22,7 @@ export function spectrumOf(source: FieldSource, offsetGhz: Float64Array): Spectr
   const groupDelayPs = new Float64Array(n);
   const groupDelaySlopePsPerGhz = new Float64Array(n);
   source.fieldInto(offsetGhz, re, im);
-  source.groupDelayInto(offsetGhz, groupDelayPs);
-  source.groupDelaySlopeInto(offsetGhz, groupDelaySlopePsPerGhz);
+  source.groupDelayInto(offsetGhz, groupDelayPs, groupDelaySlopePsPerGhz);
   const least = LEAST_SHARE_OF_PEAK * powerExtremesOverFsr(source).greatest.value;
   for (let i = 0; i < n; i++) {
     if (re[i]! * re[i]! + im[i]! * im[i]! > least) continue;
