@@ -1,6 +1,9 @@
 /** From a transfer function to circuits: the all-pass pair and the cascade of sections. */
 export { type RealisedPair, synthesiseAllPassPair } from './all-pass-pair.ts';
+export { CASCADE_DEFAULTS, type CascadeOptions } from './cascade-options.ts';
 export { type CellLosses, refuseUndercoupled, withLosses } from './interferometer.ts';
+export type { CascadeGoal, OmegaBand, OmegaMask } from './mask-problem.ts';
+export { type OptimisedCascade, optimiseCascade, refineCascade } from './optimise-cascade.ts';
 export { sectionOf } from './section.ts';
 export {
   type CascadeCell,
@@ -10,11 +13,4 @@ export {
   sectionCount,
   synthesiseSectionCascade,
 } from './section-cascade.ts';
-export type { CascadeGoal, OmegaBand, OmegaMask } from './mask-problem.ts';
-export {
-  CASCADE_DEFAULTS,
-  type CascadeOptions,
-  type OptimisedCascade,
-  optimiseCascade,
-  refineCascade,
-} from './optimise-cascade.ts';
+export { cascadeTradeOff, type PassbandAsk, passbandMask, type TradeOffPoint } from './trade-off.ts';

@@ -6,8 +6,9 @@
  * hurts (ripple) an extra unknown, the level, bounds all passband points from above and their demand hangs from it; so
  * every function is smooth and no step is spoilt by the peak jumping to another point.
  */
-import type { MinimaxProblem } from '../optimise/index.ts';
+
 import type { TransmissionReference } from '../filter/index.ts';
+import type { MinimaxProblem } from '../optimise/index.ts';
 import type { CascadeModel } from './cascade-model.ts';
 
 /** An interval of Ω (may pass ±π) with what is asked there. */

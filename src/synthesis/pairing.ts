@@ -106,7 +106,10 @@ function take(draft: Draft, free: boolean[], left: number[], sign: 1 | -1): void
 }
 
 /** All complete pairings; the product of leading coefficients decides, since it is the constant in front of H. */
-function enumerate(table: Table, poles: number): { best: Draft[]; considered: number; spreadDb: number } | null {
+function enumerate(
+  table: Table,
+  poles: number,
+): { best: Draft[]; considered: number; spreadDb: number } | null {
   const free = new Array<boolean>(poles).fill(true);
   const left = table.zeros.map(({ members }) => members.length);
   const chosen: Draft[] = [];
@@ -192,7 +195,8 @@ export function pairPolesWithZeros(filter: TransferFunction): Pairing {
     throw new Refusal({
       code: 'SPECIFICATION_UNREACHABLE',
       limit: 'PASSIVITY',
-      detail: 'The filter does not come apart into second-order sections with their nulls on the unit circle.',
+      detail:
+        'The filter does not come apart into second-order sections with their nulls on the unit circle.',
     });
   return {
     choices: settle(table, drafts),

@@ -9,13 +9,16 @@
 import { Complex } from 'complex.js';
 import type { CircuitParameters, InterferometerParameters } from '../circuit/index.ts';
 import { Refusal } from '../errors.ts';
-import { evaluateInto, type FilterSection, type OutputPort, type TransferFunction } from '../filter/index.ts';
+import {
+  type FilterSection,
+  type OutputPort,
+  type TransferFunction,
+  transmissionAt,
+} from '../filter/index.ts';
 import { type Pairing, pairPolesWithZeros } from './pairing.ts';
-import { circleGrid } from './peak.ts';
+import { greatestOnCircle } from './peak.ts';
 import { cellWithNull, sectionOf } from './section.ts';
 import { orderSections } from './section-order.ts';
-
-const GRID_POINTS = 512;
 
 export interface CascadeCell {
   readonly interferometer: InterferometerParameters;
@@ -47,15 +50,6 @@ export function productOf(sections: readonly FilterSection[]): TransferFunction 
     poles: sections.flatMap((section) => section.poles),
     gain: sections.reduce((gain, section) => gain.mul(section.gain), new Complex(1, 0)),
   };
-}
-
-/** Greatest transmission of a product over the FSR, dB. */
-function peakDbOf(filter: TransferFunction): number {
-  const grid = circleGrid(filter.poles, GRID_POINTS);
-  const re = new Float64Array(grid.length);
-  const im = new Float64Array(grid.length);
-  evaluateInto(filter, grid, re, im);
-  return re.reduce((peak, value, k) => Math.max(peak, 20 * Math.log10(Math.hypot(value, im[k]!))), Number.NEGATIVE_INFINITY);
 }
 
 /** Throws a Refusal unless there is one output for each section. */
@@ -92,7 +86,8 @@ export function synthesiseSectionCascade(
   const ordered = orderSections(built.map((part) => realise(part, 'OUT2').section));
   const cells = ordered.order.map((index, place) => realise(built[index]!, outputs[place]!));
   const product = productOf(cells.map((cell) => cell.section));
-  const insertionLossDb = -peakDbOf(product);
+  const peak = greatestOnCircle(product.poles, (omegaRad) => transmissionAt(product, omegaRad));
+  const insertionLossDb = -10 * Math.log10(peak.value);
   const { method, considered, spreadDb } = pairing;
   const paired =
     method === 'ENUMERATED'
