@@ -17,8 +17,8 @@ FROM node:${NODE_VERSION}-bookworm-slim
 ENV NODE_ENV=production HOST=0.0.0.0 PORT=8137
 WORKDIR /app
 COPY package.json package-lock.json .npmrc ./
-# Nothing is compiled or generated here: dist holds all that was.
-RUN npm ci --omit=dev --ignore-scripts && npm cache clean --force
+# Nothing is compiled or generated here: dist holds all that was. Optional packages are the embedded database.
+RUN npm ci --omit=dev --omit=optional --ignore-scripts && npm cache clean --force
 COPY --from=build /app/dist dist
 COPY prisma/migrations prisma/migrations
 COPY schema/*.graphql schema/

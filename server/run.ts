@@ -23,12 +23,34 @@ function tellTerminal({ url, dataFolder, firstAdminToken }: RunningProcess): voi
   if (lines.length > 0) process.stdout.write(`\n${lines.join('\n')}\n\n`);
 }
 
+/**
+ * One Ctrl-C often arrives twice: from the terminal, which tells every process of its group, and from a launcher that
+ * passes it on. Only a signal that comes later than this is a second wish.
+ */
+const SAME_SIGNAL_MS = 1_000;
+const PARENT_CHECK_MS = 1_000;
+
+/** npm tells its shell to end and not us: started by npm, we end when our parent has gone. */
+function onParentGone(end: () => void): void {
+  if (process.env.npm_lifecycle_event === undefined) return;
+  const parent = process.ppid;
+  const timer = setInterval(() => {
+    if (process.ppid === parent) return;
+    clearInterval(timer);
+    end();
+  }, PARENT_CHECK_MS);
+  timer.unref();
+}
+
 function endOnSignals(running: RunningProcess, config: Config, logger: Logger): void {
-  let ending = false;
-  const end = (signal: NodeJS.Signals): void => {
-    if (ending) process.exit(EXIT_INTERRUPTED);
-    ending = true;
-    logger.info({ signal }, 'ending: connections drain, computations finish or go back to the queue');
+  let endingSince: number | null = null;
+  const end = (cause: string): void => {
+    if (endingSince !== null) {
+      if (performance.now() - endingSince > SAME_SIGNAL_MS) process.exit(EXIT_INTERRUPTED);
+      return;
+    }
+    endingSince = performance.now();
+    logger.info({ cause }, 'ending: connections drain, computations finish or go back to the queue');
     setTimeout(
       () => {
         logger.error({}, 'did not end in time');
@@ -43,17 +65,27 @@ function endOnSignals(running: RunningProcess, config: Config, logger: Logger): 
   };
   process.on('SIGTERM', end);
   process.on('SIGINT', end);
+  onParentGone(() => end('parent gone'));
+}
+
+export interface RunOptions {
+  /** Changes what the environment says, before anything starts. */
+  readonly adjust?: (config: Config) => Config;
+  /** Once it serves; the process goes on serving afterwards, and ends when this fails. */
+  readonly then?: (running: RunningProcess) => Promise<void>;
 }
 
 /** Runs until a signal ends it: SIGTERM or SIGINT once ends cleanly, twice at once. */
-export async function runProcess(parts: Parts): Promise<void> {
+export async function runProcess(parts: Parts, { adjust, then }: RunOptions = {}): Promise<void> {
   try {
-    const config = readConfig(process.env);
+    const environment = readConfig(process.env);
+    const config = adjust ? adjust(environment) : environment;
     const logger = createLogger(config.logLevel);
     for (const name of unknownVariables(process.env))
       logger.warn({ variable: name }, 'not a variable of this service: misspelt?');
     const running = await startProcess(config, parts, logger);
     endOnSignals(running, config, logger);
+    if (then) await then(running).catch((error: unknown) => running.stop().then(() => Promise.reject(error)));
     tellTerminal(running);
   } catch (error) {
     const isConfiguration = error instanceof ConfigurationError;

@@ -33,7 +33,7 @@ export interface ForbiddenGround {
 /** Bands of no width (a line) are drawn this wide, as a share of the frame. */
 const LEAST_WIDTH = 0.008;
 /** Share of the frame's width that one character of the labels takes. */
-const CHARACTER_WIDTH = 0.0095;
+const CHARACTER_WIDTH = 0.0085;
 
 /** Share of the frame's width that a line of text is high. */
 const LINE_HEIGHT = 0.022;

@@ -120,10 +120,32 @@ describe('npm start', () => {
     const again = await urlOf(second);
     expect((await call(`${again}/v1/me`, 'GET', token)).status).toBe(200);
     expect(second.output()).not.toMatch(/rbt_/);
-    // Ctrl-C in a terminal reaches every process of the group at once.
+    // Ctrl-C in a terminal reaches every process of the group, and a launcher passes it on once more.
+    const exited = once(second.child, 'exit');
     process.kill(-second.child.pid!, 'SIGINT');
-    await once(second.child, 'exit');
+    second.child.kill('SIGINT');
+    await exited;
     expect(second.child.exitCode).toBe(0);
+    expect(second.output()).not.toMatch(/"level":[56]0/);
+  });
+
+  it('ends cleanly with its npm, which tells only its shell', async () => {
+    const entry = new URL('../../server/main.ts', import.meta.url).pathname;
+    const environment = { npm_lifecycle_event: 'start', PORT: '0', RINGBINDER_DATA: join(folder, 'data') };
+    const shell = spawn('/bin/sh', ['-c', `"${process.execPath}" --import tsx "${entry}"; true`], {
+      env: { ...process.env, ...environment, DATABASE_URL: '' },
+      stdio: ['ignore', 'pipe', 'inherit'],
+    });
+    let output = '';
+    shell.stdout.on('data', (chunk: Buffer) => {
+      output += chunk.toString();
+    });
+    await expect.poll(() => /REST +http/.test(output), { timeout: PATIENCE_MS }).toBe(true);
+    shell.kill('SIGTERM');
+    // The pipe closes when the last process that holds it has gone.
+    await once(shell.stdout, 'close');
+    expect(output).toContain('"cause":"parent gone"');
+    expect(output).not.toMatch(/"level":[56]0/);
   });
 
   it('says which variable is wrong and starts nothing', async () => {
