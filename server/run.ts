@@ -85,7 +85,7 @@ export async function runProcess(parts: Parts, { adjust, then }: RunOptions = {}
       logger.warn({ variable: name }, 'not a variable of this service: misspelt?');
     const running = await startProcess(config, parts, logger);
     endOnSignals(running, config, logger);
-    if (then) await then(running).catch((error: unknown) => running.stop().then(() => Promise.reject(error)));
+    if (then) await then(running);
     tellTerminal(running);
   } catch (error) {
     const isConfiguration = error instanceof ConfigurationError;

@@ -93,7 +93,7 @@ export function cascadeBeside(chosen: OpenGroup, groups: readonly Group[], chip:
       fits,
       worstMarginDb: null,
       insertionLossDb: lossDb,
-      reason: `as exact passive sections the filter would lose ${lossDb.toFixed(1)} dB before any loss of the chip, the pair none; joint optimisation over the mask would make that less, and was not needed`,
+      reason: `as exact passive sections the filter would lose ${lossDb.toFixed(1)} dB before any loss of the chip, the pair none; ${fits ? 'joint optimisation over the mask would make that less, and was not needed' : 'and it does not fit the cells of this chip'}`,
     },
   ];
 }
