@@ -20,7 +20,7 @@ export function amplitudeOf(lossDb: number): number {
 }
 
 /** 1 − amplitude of a loss in dB (power), accurate for small losses. */
-export function amplitudeDeficitOf(lossDb: number): number {
+function amplitudeDeficitOf(lossDb: number): number {
   return -Math.expm1(-NEPER_PER_DB * lossDb);
 }
 

@@ -20,6 +20,7 @@ import {
   refresh,
 } from './compiled.ts';
 import { RING_CONSTANT, RING_STRIDE } from './elements.ts';
+import { fillTables, prepareEvenGrid } from './half-angles.ts';
 import { parametersInto } from './parameters.ts';
 import { createPlan, HEAP, MOST_RINGS, type Plan, planInto } from './plan.ts';
 import { createPointWorkspace, evaluatePoint, type PointWorkspace } from './point.ts';
@@ -32,11 +33,11 @@ export interface FieldBuffers {
   readonly out2Im: Float64Array;
 }
 
-/** Beyond this angle δ·Ω the vector sine would lose digits; nobody sweeps 160,000 free spectral ranges. */
-const MOST_ANGLE = 1e6;
-
-/** How far a frequency may stray from an even grid, δ·Ω in rad: its square, 1e-18, is lost in rounding. */
-const EVEN = 1e-9;
+/**
+ * Rings multiplied before one division: outside their exact windows 64 denominators of 0.01 make 1e-128, whose square is
+ * still a number.
+ */
+const MOST_RUN = 64;
 
 /** A compiled circuit. Not to be shared between threads; evaluations of different kernels may alternate freely. */
 export interface Kernel {
@@ -113,7 +114,7 @@ export function evaluateInto(kernel: Kernel, omegaRad: Float64Array, out: FieldB
     return;
   }
   loadConstants(kernel);
-  prepareEvenGrid(kernel, omegaRad);
+  prepareEvenGrid(kernel.plan, kernel.routines, omegaRad);
   for (let start = 0; start < omegaRad.length; start += BLOCK) evaluateBlock(kernel, omegaRad, start, out);
 }
 
@@ -155,7 +156,7 @@ function evaluateBlock(kernel: Kernel, omegaRad: Float64Array, start: number, ou
   // whole vectors: the inner loops may run up to three frequencies over the end
   const padded = (n + 3) & ~3;
   for (let i = n; i < padded; i++) heap[i] = heap[n - 1]! + (i - n + 1) * (plan.step || 0);
-  if (!fillTables(kernel, padded)) {
+  if (!fillTables(plan, routines, padded)) {
     for (let i = start; i < start + n; i++) exactInto(kernel, omegaRad[i]!, out, i);
     return;
   }
@@ -172,72 +173,6 @@ function evaluateBlock(kernel: Kernel, omegaRad: Float64Array, start: number, ou
   }
   storeFields(kernel.views[from]!, start, n, out);
   if (plan.narrowCount > 0) redoNearResonance(kernel, omegaRad, start, n, out);
-}
-
-/** On a grid of several blocks that may be even: the half angles of one block, counted from its first frequency. */
-function prepareEvenGrid({ plan, routines }: Kernel, omegaRad: Float64Array): void {
-  const n = omegaRad.length;
-  plan.step = Number.NaN;
-  if (n < 2 * BLOCK) return;
-  plan.step = (omegaRad[n - 1]! - omegaRad[0]!) / (n - 1);
-  if (!(BLOCK * Math.abs(plan.step) * plan.longest <= MOST_ANGLE)) {
-    plan.step = Number.NaN;
-    return;
-  }
-  for (let i = 0; i < BLOCK; i++) routines.heap[HEAP.steps + i] = i * plan.step;
-  for (let t = 0; t < plan.tableCount; t++) halfAngles(plan, routines, t, BLOCK, HEAP.steps, HEAP.stepTable);
-}
-
-function halfAngles(
-  plan: Plan,
-  routines: BlockRoutines,
-  table: number,
-  n: number,
-  omega: number,
-  tables: number,
-): void {
-  const cos = tables + 2 * table * BLOCK;
-  routines.halfAngles(n, omega, plan.tables[table]! / 2, cos, cos + BLOCK);
-}
-
-/** Half-angle tables by rotation along an even grid; false, and nothing of use, where the n frequencies are not even. */
-function rotateTables({ plan, routines }: Kernel, n: number): boolean {
-  if (Number.isNaN(plan.step)) return false;
-  const first = routines.heap[HEAP.omega]!;
-  if (!((Math.abs(first) + BLOCK * Math.abs(plan.step)) * plan.longest <= MOST_ANGLE)) return false;
-  for (let t = 0; t < plan.tableCount; t++) {
-    const half = plan.tables[t]! / 2;
-    const step = HEAP.stepTable + 2 * t * BLOCK;
-    const to = HEAP.table + 2 * t * BLOCK;
-    const angle = half * first;
-    const stray = routines.rotate(
-      n,
-      HEAP.omega,
-      HEAP.steps,
-      half,
-      step,
-      Math.cos(angle),
-      Math.sin(angle),
-      to,
-    );
-    if (!(stray * Math.max(1, plan.longest) <= EVEN)) return false;
-  }
-  return true;
-}
-
-/**
- * Half-angle tables of the n frequencies at the front of the heap. False where an angle is too great for the vector sine
- * or not a number.
- */
-function fillTables(kernel: Kernel, n: number): boolean {
-  if (rotateTables(kernel, n)) return true;
-  const { plan, routines } = kernel;
-  const { heap } = routines;
-  let most = 0;
-  for (let i = 0; i < n; i++) most = Math.max(most, Math.abs(heap[i]!));
-  if (!(most * plan.longest <= MOST_ANGLE)) return false;
-  for (let t = 0; t < plan.tableCount; t++) halfAngles(plan, routines, t, n, HEAP.omega, HEAP.table);
-  return true;
 }
 
 function storeFields(views: readonly Float64Array[], start: number, n: number, out: FieldBuffers): void {
@@ -287,7 +222,8 @@ function evaluateArm({ plan, compiled, routines }: Kernel, c: number, arm: numbe
     const kind = plan.slotKind[slot]!;
     const delay = plan.slotTable[slot]!;
     let stop = slot + 1;
-    while (stop < end && plan.slotKind[stop] === kind && plan.slotTable[stop] === delay) stop++;
+    const most = Math.min(end, slot + MOST_RUN);
+    while (stop < most && plan.slotKind[stop] === kind && plan.slotTable[stop] === delay) stop++;
     const cos = HEAP.table + 2 * delay * BLOCK;
     const rings = HEAP.rings + slot * HEAP_RING;
     if (kind === ALL_PASS) routines.allPassRings(n, cos, cos + BLOCK, rings, stop - slot, re, im);

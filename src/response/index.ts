@@ -5,4 +5,4 @@ export { type ReducedCurve, reduceTo } from './reduce.ts';
 export type { BandCompliance, Compliance, Figures, Quantity, Spectrum, Stage } from './response.ts';
 export { type Feature, type FieldSource, sourceOfCircuit, sourceOfTransferFunction } from './source.ts';
 export { dispersionPsPerNm, gapsOf, phaseRad, spectrumOf, transmissionDb } from './spectrum.ts';
-export { powerExtremes, powerExtremesOverFsr, toDb } from './transmission.ts';
+export { powerExtremes, toDb } from './transmission.ts';

@@ -1,13 +1,17 @@
 import { describe, expect, it } from 'vitest';
 import {
+  ARM_PARAMETER,
+  CELL_PARAMETER,
   type CircuitParameters,
   createFieldBuffers,
   createKernel,
   evaluateInto,
+  layoutOf,
   type Netlist,
   NetlistInvalid,
   NetlistSingular,
   netlistOf,
+  RING_PARAMETER,
   refreshKernel,
   solveNetlist,
 } from '../../src/circuit/index.ts';
@@ -154,8 +158,35 @@ describe('kernel parameters', () => {
     expect(() => createKernel(bad({ couplerExcessLossDb: -0.1 }))).toThrow(RangeError);
     expect(() => createKernel({ join: 'OUT1', cells: [] })).toThrow(RangeError);
     const kernel = createKernel(circuit);
-    kernel.parameters[0] = 2;
+    kernel.parameters[layoutOf(circuit)[1]!.cellAt + CELL_PARAMETER.outputCoupling] = 2;
     expect(() => refreshKernel(kernel)).toThrow(RangeError);
+  });
+
+  it('are written in place by an optimiser and then hold as if the circuit had been made so [cross-check]', () => {
+    const kernel = createKernel(circuit);
+    const { ringAt, armAt } = layoutOf(circuit)[1]!;
+    kernel.parameters[ringAt[1]! + RING_PARAMETER.powerCrossCoupling] = 0.9;
+    kernel.parameters[ringAt[1]! + RING_PARAMETER.phaseRad] = -1;
+    kernel.parameters[armAt[0] + ARM_PARAMETER.phaseRad] = 2;
+    refreshKernel(kernel);
+    const changed: CircuitParameters = {
+      ...circuit,
+      cells: [
+        cell,
+        {
+          ...cell,
+          arms: [
+            { ...arm, phaseRad: 2 },
+            { ...arm, rings: [{ ...ring, powerCrossCoupling: 0.9, phaseRad: -1 }] },
+          ],
+        },
+      ],
+    };
+    const out = createFieldBuffers(1);
+    evaluateInto(kernel, Float64Array.of(0.7), out);
+    const { out1, out2 } = solveNetlist(netlistOf(changed), Float64Array.of(0.7));
+    expect(Math.hypot(out.out1Re[0]! - out1!.re[0]!, out.out1Im[0]! - out1!.im[0]!)).toBeLessThan(1e-14);
+    expect(Math.hypot(out.out2Re[0]! - out2!.re[0]!, out.out2Im[0]! - out2!.im[0]!)).toBeLessThan(1e-14);
   });
 
   it('give not-a-number for a frequency that is not one, and the rest of the grid unharmed', () => {
