@@ -38,7 +38,7 @@ export interface ComputationDeps {
 }
 
 /** Another run of the same computation counts; this one's result does not. */
-export class SupersededError extends Error {
+class SupersededError extends Error {
   override readonly name = 'SupersededError';
 }
 

@@ -39,7 +39,7 @@ const CHARACTER_WIDTH = 0.0085;
 const LINE_HEIGHT = 0.022;
 
 /** dB with a true minus sign. */
-export function decibels(value: number): string {
+function decibels(value: number): string {
   return `${String(Math.round(value * 100) / 100).replace('-', '\u2212')} dB`;
 }
 
