@@ -1,6 +1,9 @@
 /**
- * The figures of a response (definitions in the table of the README): each a number, or null with the reason. All of one
- * output, over one FSR, both sides of the centre.
+ * The figures of a response, each a number, or null with the reason. All of one output, over one FSR, both sides of the
+ * centre. Insertion loss: −(greatest transmission in the passband), against the light sent in. Ripple: greatest − least
+ * there. Rejection: greatest in the passband − greatest in the stopband. Extinction ratio: greatest − least over the FSR.
+ * −x dB bandwidth: width of the connected span around the centre within x dB of the peak. Neighbour isolation: least of
+ * the own output in its channel window − greatest of the other output there, the worst window counting.
  */
 import { FLOOR_DB } from '../conventions.ts';
 import type { IntervalGhz } from '../filter/specification.ts';
