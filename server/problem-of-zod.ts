@@ -106,7 +106,7 @@ function fieldsOf(issue: Issue, body: unknown): FieldProblem[] {
   if (issue.code === 'unrecognized_keys') {
     return issue.keys.map((key) => {
       const path = [...issue.path, key];
-      const detail = `"${key}" is not a member of ${pointerOf(issue.path) || 'the request'}.`;
+      const detail = `${pointerOf(path)} is not a member that anything reads.`;
       return fieldOf('BAD_INPUT', path, detail, valueAt(body, path), undefined);
     });
   }
