@@ -4,11 +4,19 @@
  * ignores the terminal's signals, so that Ctrl-C reaches us first and running statements can end.
  */
 import { spawn } from 'node:child_process';
+import { once } from 'node:events';
 import type { Socket } from 'node:net';
 import type { Launch, Launched } from './types.ts';
 
-const SCRIPT =
-  '"$@" 3<&- & server=$!; trap "" INT TERM HUP; cat <&3 >/dev/null; kill -INT $server 2>/dev/null; wait $server';
+/** Ends when the server ends, for whatever reason; the watcher goes with it, lest it signals a number that is somebody else's by then. */
+const SCRIPT = [
+  '"$@" 3<&- & server=$!',
+  'trap "" INT TERM HUP',
+  '{ cat <&3; kill -INT $server; } >/dev/null 2>&1 & watcher=$!',
+  'exec 3<&-',
+  'wait $server',
+  'kill -KILL $watcher 2>/dev/null',
+].join('\n');
 
 /** Crash recovery of a large write-ahead log may take this long. */
 const START_TIMEOUT_MS = 120_000;
@@ -35,9 +43,8 @@ export function launchWrapped(launch: Launch): Promise<Launched> {
   const words = child.stdio[2] as Socket;
   // The reader may be gone already when we close.
   pipe.on('error', () => {});
-  const ended = new Promise<void>((done) => {
-    child.once('close', () => done());
-  });
+  // Not the child's 'close': that waits for our own end of the pipe as well.
+  const ended = Promise.all([once(child, 'exit'), once(words, 'close')]);
   let log = '';
   return new Promise((answer) => {
     const refuse = (why: string) => {
@@ -46,8 +53,10 @@ export function launchWrapped(launch: Launch): Promise<Launched> {
       answer({ started: false, log: log + why });
     };
     const timer = setTimeout(() => refuse('no answer in time'), START_TIMEOUT_MS);
-    child.once('error', (error) => refuse(String(error)));
-    child.once('close', () => refuse(''));
+    ended.then(
+      () => refuse(''),
+      (error: unknown) => refuse(String(error)),
+    );
     words.on('data', (chunk: Buffer) => {
       log = (log + chunk).slice(-LOG_KEPT);
       if (!log.includes('ready to accept connections')) return;
