@@ -1,6 +1,5 @@
 /** Minimisers, each a published method with its source. */
 export {
-  LEAST_SQUARES_DEFAULTS,
   type LeastSquaresOptions,
   type LeastSquaresProblem,
   type LeastSquaresResult,

@@ -26,7 +26,7 @@ export interface LeastSquaresOptions {
   readonly maximumEvaluations: number;
 }
 
-export const LEAST_SQUARES_DEFAULTS: LeastSquaresOptions = {
+const LEAST_SQUARES_DEFAULTS: LeastSquaresOptions = {
   reductionTolerance: 1e-14,
   stepTolerance: 1e-12,
   gradientTolerance: 1e-14,

@@ -39,7 +39,6 @@ export interface MinimaxOptions {
   readonly goodEnough?: number;
   /** Damping of the first step, in units of F per squared unknown. */
   readonly initialDamping: number;
-  readonly onStep?: (value: number, evaluations: number) => void;
 }
 
 export type MinimaxStop = 'GOOD_ENOUGH' | 'NO_GAIN_LEFT' | 'STEP_TOO_SMALL' | 'EVALUATIONS_USED';
@@ -217,7 +216,6 @@ export function minimiseMaximum(
       at = tried.at;
       current = tried.merit;
       trace.push(current);
-      options.onStep?.(current, evaluations);
       model = buildModel(problem, x, values, jacobian, at, options);
     }
     if (!(ratio >= POOR_RATIO)) damping *= TIGHTEN;

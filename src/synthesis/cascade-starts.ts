@@ -23,7 +23,7 @@ export interface CascadeStart {
 }
 
 /** All ways to put 0…count−1 in pairs, one left single where count is odd. */
-export function pairings(count: number): number[][][] {
+function pairings(count: number): number[][][] {
   const visit = (free: readonly number[]): number[][][] => {
     const [first, ...rest] = free;
     if (first === undefined) return [[]];
@@ -40,7 +40,7 @@ export function pairings(count: number): number[][][] {
  * Uniform numbers in [0, 1) from a seed. Source: G. Steele, D. Lea, C. Flood, "Fast splittable pseudorandom number
  * generators", OOPSLA 2014 (the 32-bit variant of its mixing step; from memory).
  */
-export function seededUniform(seed: number): () => number {
+function seededUniform(seed: number): () => number {
   let state = seed >>> 0;
   return () => {
     state = (state + 0x9e3779b9) >>> 0;

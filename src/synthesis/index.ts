@@ -1,6 +1,6 @@
 /** From a transfer function to circuits: the all-pass pair and the cascade of sections. */
 export { type RealisedPair, synthesiseAllPassPair } from './all-pass-pair.ts';
-export { CASCADE_DEFAULTS, type CascadeOptions } from './cascade-options.ts';
+export type { CascadeOptions } from './cascade-options.ts';
 export { type CellLosses, refuseUndercoupled, withLosses } from './interferometer.ts';
 export type { CascadeGoal, OmegaBand, OmegaMask } from './mask-problem.ts';
 export { type OptimisedCascade, optimiseCascade, refineCascade } from './optimise-cascade.ts';

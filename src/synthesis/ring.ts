@@ -40,7 +40,7 @@ export function ringOfPole(pole: Complex): RingParameters {
  * Field of a lossless unit-delay ring at Ω: (u−q)/(q+t·u), u = 2j·sin(d/2)·e^(−jd/2) = 1−e^(−jd), d = Ω+φ, q = K/(1+t) = 1−t.
  * Exact to a few ulp however narrow the ring, which (t−x)/(1−tx) is not.
  */
-export function ringField(ring: RingParameters, omegaRad: number): Complex {
+function ringField(ring: RingParameters, omegaRad: number): Complex {
   const t = Math.sqrt(1 - ring.powerCrossCoupling);
   const q = ring.powerCrossCoupling / (1 + t);
   const half = wrapPhase(omegaRad + ring.phaseRad) / 2;
@@ -56,14 +56,6 @@ export function armField(rings: readonly RingParameters[], omegaRad: number): Co
   let field = new Complex(1, 0);
   for (const ring of rings) field = field.mul(ringField(ring, omegaRad));
   return field;
-}
-
-/** Group delay of a lossless ring at Ω in unit delays: (1−t²)/|1−t·x|². */
-export function ringGroupDelay(ring: RingParameters, omegaRad: number): number {
-  const t = Math.sqrt(1 - ring.powerCrossCoupling);
-  const q = ring.powerCrossCoupling / (1 + t);
-  const sine = Math.sin(wrapPhase(omegaRad + ring.phaseRad) / 2);
-  return ring.powerCrossCoupling / (q * q + 4 * t * sine * sine);
 }
 
 /** Arm phase that puts a null at Ω on `output`: A₀ = ±A₁·e^(−jψ), upper sign on OUT1. */

@@ -107,7 +107,7 @@ export function synthesiseSectionCascade(
     insertionLossDb,
     partialPeaksDb: ordered.partialPeaksDb,
     pairing: { method, considered, spreadDb },
-    reason: `${paired}; ${placed}; passive sections cost ${insertionLossDb.toFixed(2)} dB in the passband.`,
+    reason: `${paired}; ${placed}; passive sections cost ${Math.abs(insertionLossDb).toFixed(2)} dB in the passband.`,
   };
 }
 
