@@ -6,6 +6,7 @@ import Fastify, { type FastifyBaseLogger, type FastifyInstance, LogController } 
 import type { Logger } from 'pino';
 import type { Authenticator } from './auth/index.ts';
 import type { Config } from './config.ts';
+import { registerGraphql } from './graphql/index.ts';
 import type { Operations } from './operations/index.ts';
 import {
   clientErrorHandler,
@@ -36,6 +37,8 @@ export interface AppDeps {
   readonly logger: Logger;
   /** Version of the program, for the document. */
   readonly version: string;
+  /** Whether the GraphQL schema may be asked about without a token: a demo's convenience. */
+  readonly openIntrospection?: boolean;
 }
 
 /** Time for a whole request to arrive, ms: a megabyte over a slow line, and no connection held open by trickling. */
@@ -84,6 +87,13 @@ export async function buildApp(deps: AppDeps): Promise<FastifyInstance> {
   registerBodies(app);
   registerMethods(app, routes);
   registerDocument(app, version);
+  registerGraphql(app, {
+    operations,
+    authenticator,
+    notifications: store.notifications,
+    admit,
+    openIntrospection: deps.openIntrospection ?? false,
+  });
   app.after(() => {
     registerRest(app, { operations, authenticator, waiting });
     registerOperating(app, store, metrics);

@@ -14,7 +14,7 @@ import { registerViewer } from './viewer.ts';
 export * from './frame/index.ts';
 export { registerOperating } from './operating.ts';
 export { registerDocument, registerPages } from './pages.ts';
-export { createTokenBuckets } from './protocol/index.ts';
+export { createTokenBuckets, JsonRefused, negotiate, readJson } from './protocol/index.ts';
 export { createWaiting } from './waiting.ts';
 
 export function registerRest(app: FastifyInstance, parts: Omit<RestDeps, 'designTexts'>): void {

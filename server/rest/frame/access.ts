@@ -23,8 +23,14 @@ declare module 'fastify' {
   }
 }
 
+/** What of a request tells who asks. */
+export interface Caller {
+  readonly ip: string;
+  readonly headers: { readonly authorization?: string | undefined };
+}
+
 /** Believes the token of a request and counts the request against its rate. Throws UNAUTHENTICATED, RATE_LIMITED. */
-export type Admit = (request: FastifyRequest) => Promise<Viewer>;
+export type Admit = (caller: Caller) => Promise<Viewer>;
 
 export interface RateLimits {
   readonly perSecond: number;

@@ -4,4 +4,11 @@ export { registerDraining } from './draining.ts';
 export { createRequestIds, registerHeaders } from './headers.ts';
 export { registerMethods } from './methods.ts';
 export { type Metrics, registerMetrics } from './metrics.ts';
-export { clientErrorHandler, PROBLEM_TYPE, registerProblems, sendProblem, writeProblem } from './problems.ts';
+export {
+  asProblem,
+  clientErrorHandler,
+  PROBLEM_TYPE,
+  registerProblems,
+  sendProblem,
+  writeProblem,
+} from './problems.ts';

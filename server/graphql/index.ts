@@ -1,0 +1,2 @@
+/** GraphQL. */
+export { type GraphqlDeps, registerGraphql } from './register.ts';
