@@ -158,6 +158,26 @@ describe('all-pass pair of the classical families', () => {
     );
   });
 
+  it('equal loss per unit delay gives H(z/a) exactly, poles and zeros drawn in by a [published: physics of uniform damping, Madsen and Zhao 1999, section 6.1, from memory]', () => {
+    const filter = familyFilter('ELLIPTIC', 5, 0.3 * Math.PI, false);
+    const pair = synthesiseAllPassPair(filter, 'OUT1');
+    const a = 10 ** (-0.2 / 20);
+    const damped = {
+      zeros: filter.zeros.map((zero) => zero.mul(a)),
+      poles: filter.poles.map((pole) => pole.mul(a)),
+      gain: filter.gain.mul(new Complex(0, pair.constantPhaseRad).exp()),
+    };
+    const grid = poleAwareGrid(damped.poles, 64);
+    const lossy = withLosses(pair.interferometer, { ringLossDb: 0.2, couplerExcessLossDb: 0 });
+    const { re, im } = solveNetlist(netlistOf({ cells: [lossy], join: 'OUT1' }), grid).out1!;
+    const wantedRe = new Float64Array(grid.length);
+    const wantedIm = new Float64Array(grid.length);
+    evaluateInto(damped, grid, wantedRe, wantedIm);
+    re.forEach((value, k) => {
+      expect(Math.hypot(value - wantedRe[k]!, im[k]! - wantedIm[k]!)).toBeLessThan(FIELD);
+    });
+  });
+
   it('an odd half-band has one ring with K = 1, a plain delay [published: Gazsi, IEEE Trans. CAS 32, 68 (1985)]', () => {
     const filter = designHalfBand({ family: 'BUTTERWORTH', order: 5 });
     const { interferometer } = synthesiseAllPassPair(filter, 'OUT2');
