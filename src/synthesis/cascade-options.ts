@@ -14,7 +14,7 @@ export interface CascadeOptions {
   /** Greatest insertion loss, dB; absent: none. */
   readonly maximumInsertionLossDb?: number;
   readonly seed: number;
-  /** Further starts, such as the solution of a neighbouring mask. */
+  /** Further starts, such as the solution of a neighbouring mask; they take on `losses`. */
   readonly startingCells?: readonly (readonly InterferometerParameters[])[];
   /** Progress in [0, 1], never falling; throw from here to cancel. */
   readonly onProgress?: (share: number) => void;

@@ -15,6 +15,7 @@ import { type CascadeCell, needsOutputs } from './section-cascade.ts';
 
 /** A demand missed by less than this is kept: below what a lab can measure. */
 const KEPT_DB = 0.01;
+
 export interface OptimisedCascade {
   /** Cells with their exact zeros, poles and gain, losses included. */
   readonly cells: readonly CascadeCell[];
@@ -59,7 +60,7 @@ function report(task: Task, found: FoundCascade): OptimisedCascade {
     rippleDb: -insertionLossDb - least,
     starts,
     evaluations,
-    reason: `Optimised jointly over the mask from ${starts} starts (every pairing of the poles, mirrored or not): ${insertionLossDb.toFixed(2)} dB insertion loss, ${met ? 'all demands kept' : `worst demand missed by ${miss.toFixed(2)} dB`}.`,
+    reason: `Optimised jointly over the mask from ${starts === 1 ? 'the given cells' : `${starts} starts over the pairings of the poles, mirrored or not`}: ${insertionLossDb.toFixed(2)} dB insertion loss, ${met ? 'all demands kept' : `worst demand missed by ${miss.toFixed(2)} dB`}.`,
   };
 }
 
@@ -90,7 +91,8 @@ export function optimiseCascade(
 
 /**
  * Goes on from given cells (losses, delays and all) towards the same goals: for a cascade that is already near, such as
- * one on a fitted model of the chip. Arms may hold any number of rings; the sections' zeros need at most one an arm.
+ * one on a fitted model of the chip. Throws RangeError for cells that are no sections: more than one ring an arm, rings
+ * of other than unit delay, arms with a plain delay.
  */
 export function refineCascade(
   cells: readonly InterferometerParameters[],
