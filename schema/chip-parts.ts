@@ -5,7 +5,7 @@ import { type OneOf, oneOfRule } from './one-of.ts';
 import { cellNameRule, nameRule } from './text.ts';
 
 /** Optical frequencies a chip may be meant for, THz (500 nm to 2,998 nm). */
-export const THZ_RANGE = { min: 100, max: 500 } as const;
+const THZ_RANGE = { min: 100, max: 500 } as const;
 
 export const delayRule = z.strictObject({
   unitDelayLengthUm: z.number().positive().max(1e7),

@@ -73,7 +73,7 @@ function checkCell(cell: InterferometerCellInput, path: Path, issues: Issues): v
 }
 
 /** What a heater can sit on: tunable couplers, rings and arms, as element paths. */
-export function drivableElements(cells: ChipModelInput['cells']): string[] {
+function drivableElements(cells: ChipModelInput['cells']): string[] {
   return cells.flatMap(({ interferometer: cell }) => {
     const rings = (cell.ringsPerArm[0] ?? 0) + (cell.ringsPerArm[1] ?? 0);
     return [

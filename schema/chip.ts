@@ -9,7 +9,7 @@ export type { ChipModelInput } from './chip-parts.ts';
 export const chipModelRule = chipPartsRule.check((ctx) => checkReferences(ctx.value, ctx.issues));
 
 /** Least phase a heater in use is driven to when the model does not say: leaves room to tune both ways. */
-export const DEFAULT_HEATER_FLOOR_RAD = 0.5;
+const DEFAULT_HEATER_FLOOR_RAD = 0.5;
 
 function couplerOf(input: CouplerInput): Coupler {
   const fixed = input.powerCrossCoupling;
@@ -35,7 +35,7 @@ function cellOf({ interferometer: cell }: CellInput): InterferometerCell {
 }
 
 /** FSR of a unit delay of length L and group index n_g: c/(n_g·L). */
-export function fsrGhzOf(fsr: ChipModelInput['fsr']): number {
+function fsrGhzOf(fsr: ChipModelInput['fsr']): number {
   if (fsr.fsrGhz !== undefined) return fsr.fsrGhz;
   return NM_THZ / (fsr.delay.groupIndex * fsr.delay.unitDelayLengthUm);
 }

@@ -4,11 +4,11 @@ import { z } from 'zod';
 /** Names of chips, channels, configurations, releases: safe in a URL, in a CSV field and in an ETag without escaping. */
 export const NAME_PATTERN = /^[A-Za-z0-9][A-Za-z0-9._-]{0,63}$/;
 /** Names of cells: no point, because element paths are separated by points. */
-export const CELL_NAME_PATTERN = /^[A-Za-z0-9][A-Za-z0-9_-]{0,31}$/;
+const CELL_NAME_PATTERN = /^[A-Za-z0-9][A-Za-z0-9_-]{0,31}$/;
 /** Names of people and instruments. */
-export const ACTOR_PATTERN = /^[A-Za-z0-9][A-Za-z0-9 ._@-]{0,99}$/;
+const ACTOR_PATTERN = /^[A-Za-z0-9][A-Za-z0-9 ._@-]{0,99}$/;
 /** RFC-style header values: visible ASCII. */
-export const IDEMPOTENCY_KEY_PATTERN = /^[\x21-\x7e]{1,128}$/;
+const IDEMPOTENCY_KEY_PATTERN = /^[\x21-\x7e]{1,128}$/;
 
 const NAME_RULE = 'letters, digits, ".", "_" and "-", at most 64, the first a letter or a digit';
 

@@ -65,7 +65,7 @@ export function configurationOperations(context: Context): ConfigurationOperatio
       const input = readInput(saveVersionRule, body);
       const chip = await context.chipBySerial(input.chip);
       const hash = hashOfDesignId(input.design);
-      const design = hash === null ? null : await store.findDesign(hash);
+      const design = hash === null ? null : await context.findDesign(hash);
       if (design === null) throw notFound('such design', '/design', input.design);
       if (design.chipId !== chip.id) {
         const more = { pointer: '/design', given: input.design };

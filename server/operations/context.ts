@@ -3,7 +3,7 @@ import { type ChipModelInput, chipModelOf } from '../../schema/chip.ts';
 import type { Limits } from '../../schema/limits.ts';
 import type { ChipModel } from '../../src/chip/index.ts';
 import { notFound } from '../errors.ts';
-import type { ChipRecord, ChipRevisionRecord } from '../store/records.ts';
+import type { ChipRecord, ChipRevisionRecord, DesignRecord } from '../store/records.ts';
 import type { Store } from '../store/store.ts';
 
 export interface OperationsDeps {
@@ -20,16 +20,20 @@ export interface Context {
   readonly limits: Limits;
   readonly clock: () => number;
   readonly version: string;
+  /** By its hash; immutable, so remembered: one that retention deletes may be answered until it is forgotten. */
+  findDesign(hash: string): Promise<DesignRecord | null>;
   /** Immutable, so remembered. */
   revisionById(id: string): Promise<ChipRevisionRecord | null>;
   headRevision(chip: ChipRecord): Promise<ChipRevisionRecord>;
   modelOf(revision: ChipRevisionRecord): ChipModel;
   /** @throws ProblemError NOT_FOUND at `/chip` */
   chipBySerial(serial: string): Promise<ChipRecord>;
+  /** As it was when last read; its head may have moved on. */
+  rememberedChip(serial: string): ChipRecord | undefined;
 }
 
 /** A map that forgets what was not used for longest. */
-export function recentMap<K, V>(entries: number): Pick<Map<K, V>, 'get' | 'set'> {
+function recentMap<K, V>(entries: number): Pick<Map<K, V>, 'get' | 'set'> {
   const map = new Map<K, V>();
   return {
     get(key) {
@@ -48,13 +52,21 @@ export function recentMap<K, V>(entries: number): Pick<Map<K, V>, 'get' | 'set'>
   };
 }
 
+/** Designs remembered; each holds some 100 kB. */
+const REMEMBERED_DESIGNS = 100;
+
 /** Revisions remembered; each may be 0.7 MB with a full crosstalk matrix of 256 channels. */
 const REMEMBERED_REVISIONS = 64;
+
+/** More than a lab owns. */
+const REMEMBERED_CHIPS = 1_000;
 
 export function createContext(deps: OperationsDeps, limits: Limits): Context {
   const { store, version, clock = Date.now } = deps;
   const byId = recentMap<string, ChipRevisionRecord>(REMEMBERED_REVISIONS);
   const byNumber = recentMap<string, ChipRevisionRecord>(REMEMBERED_REVISIONS);
+  const designs = recentMap<string, DesignRecord>(REMEMBERED_DESIGNS);
+  const chips = recentMap<string, ChipRecord>(REMEMBERED_CHIPS);
   const models = new WeakMap<ChipModelInput, ChipModel>();
 
   function remember(record: ChipRevisionRecord): ChipRevisionRecord {
@@ -68,6 +80,13 @@ export function createContext(deps: OperationsDeps, limits: Limits): Context {
     limits,
     clock,
     version,
+    async findDesign(hash) {
+      const known = designs.get(hash);
+      if (known !== undefined) return known;
+      const found = await store.findDesign(hash);
+      if (found !== null) designs.set(hash, found);
+      return found;
+    },
     async revisionById(id) {
       const known = byId.get(id);
       if (known !== undefined) return known;
@@ -91,7 +110,9 @@ export function createContext(deps: OperationsDeps, limits: Limits): Context {
     async chipBySerial(serial) {
       const chip = await store.findChip(serial);
       if (chip === null) throw notFound(`chip ${serial}`, '/chip', serial);
+      chips.set(serial, chip);
       return chip;
     },
+    rememberedChip: (serial) => chips.get(serial),
   };
 }

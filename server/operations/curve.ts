@@ -25,7 +25,7 @@ function equidistant(first: number, last: number, points: number): Float64Array 
  * Ascending offsets of a grid. A grid in nm is equidistant in nm; its distances from the first line are formed by
  * c·(λ₀−λ)/(λ·λ₀), because the difference of two absolute frequencies loses digits.
  */
-export function offsetsOfGrid(grid: GridInput | undefined, chip: ChipModel): Float64Array {
+function offsetsOfGrid(grid: GridInput | undefined, chip: ChipModel): Float64Array {
   if (grid === undefined) return equidistant(-chip.fsrGhz / 2, chip.fsrGhz / 2, DEFAULT_POINTS);
   const [unit, { start, stop, points }] = unitOf<Span>(grid);
   const first = offsetGhzOf(start, unit, chip);

@@ -38,10 +38,10 @@ export function designOperations(context: Context): DesignOperations {
   return {
     async findDesign(viewer, id) {
       const hash = hashOfDesignId(id);
-      return hash !== null && may(viewer, 'design.read') ? store.findDesign(hash) : null;
+      return hash !== null && may(viewer, 'design.read') ? context.findDesign(hash) : null;
     },
     async designById(viewer, hash) {
-      return may(viewer, 'design.read') ? store.findDesign(hash) : null;
+      return may(viewer, 'design.read') ? context.findDesign(hash) : null;
     },
     async listDesigns(viewer, ask) {
       authorise(viewer, 'design.list');

@@ -23,6 +23,7 @@ import type {
   TokenRecord,
   VersionRecord,
 } from '../store/records.ts';
+import type { ReleaseHead } from '../store/store.ts';
 
 /** What came beside the body. A key in the header and one in the body must agree. */
 export interface WriteOptions {
@@ -189,7 +190,15 @@ export interface Operations {
   /** SaveVersionInput. */
   saveVersion(viewer: Viewer, body: unknown, options?: WriteOptions): Promise<Done<VersionRecord>>;
 
-  /** The pull. */
+  /** The pull: whether there is news. */
+  findReleaseHead(viewer: Viewer, serial: string, name: string): Promise<ReleaseHead | null>;
+  /** One release of all there were. */
+  findReleaseBySequence(
+    viewer: Viewer,
+    chipId: string,
+    name: string,
+    sequence: number,
+  ): Promise<ReleaseRecord | null>;
   findRelease(viewer: Viewer, serial: string, name: string): Promise<ReleaseRecord | null>;
   /** Every release name of the chip with what it points at now. */
   listReleases(viewer: Viewer, chip: ChipRecord): Promise<readonly ReleaseRecord[]>;

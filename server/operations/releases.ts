@@ -27,7 +27,7 @@ async function risksOf(context: Context, version: VersionRecord): Promise<Risk[]
       text: known === undefined ? `${text}${where}` : `${known.text}; ${text}${where}`,
     });
   }
-  const design = await context.store.findDesign(version.designId);
+  const design = await context.findDesign(version.designId);
   if (design !== null && !design.met && !risks.has('MASK_NOT_MET')) {
     const margin = design.worstMarginDb === null ? '' : ` by ${Math.abs(design.worstMarginDb).toFixed(2)} dB`;
     risks.set('MASK_NOT_MET', { code: 'MASK_NOT_MET', text: `A band is missed${margin}.` });
@@ -129,7 +129,13 @@ async function publish(
 
 type ReleaseOperations = Pick<
   Operations,
-  'findRelease' | 'listReleases' | 'listReleaseLog' | 'listReleasesOfVersion' | 'publishRelease'
+  | 'findRelease'
+  | 'findReleaseHead'
+  | 'findReleaseBySequence'
+  | 'listReleases'
+  | 'listReleaseLog'
+  | 'listReleasesOfVersion'
+  | 'publishRelease'
 >;
 
 export function releaseOperations(context: Context): ReleaseOperations {
@@ -139,6 +145,15 @@ export function releaseOperations(context: Context): ReleaseOperations {
       authorise(viewer, 'release.read');
       const isName = NAME_PATTERN.test(serial) && NAME_PATTERN.test(name);
       return isName ? store.findRelease(serial, name) : null;
+    },
+    async findReleaseHead(viewer, serial, name) {
+      authorise(viewer, 'release.read');
+      const isName = NAME_PATTERN.test(serial) && NAME_PATTERN.test(name);
+      return isName ? store.findReleaseHead(serial, name) : null;
+    },
+    async findReleaseBySequence(viewer, chipId, name, sequence) {
+      authorise(viewer, 'release.read');
+      return store.findReleaseBySequence(chipId, name, sequence);
     },
     async listReleases(viewer, chip) {
       authorise(viewer, 'release.read');

@@ -46,7 +46,7 @@ export interface MaskSpecificationView {
 /** A mask has `bands`, a family `shape`: which of the two it is shows in the members. */
 export type FilterSpecificationView = FamilySpecificationView | MaskSpecificationView;
 
-export function intervalView(interval: IntervalGhz, frame: FrequencyFrame): IntervalView {
+function intervalView(interval: IntervalGhz, frame: FrequencyFrame): IntervalView {
   return {
     low: opticalFrequency(interval.lowGhz, frame),
     high: opticalFrequency(interval.highGhz, frame),

@@ -1,7 +1,7 @@
 /** Chip models that belong to no chip. All names and numbers are invented. */
 import type { ChipModelInput } from '../../schema/chip.ts';
 
-export const channel = (name: string, drives: string) => ({
+const channel = (name: string, drives: string) => ({
   channel: name,
   drives,
   phasePerMw: 0.16,

@@ -1,6 +1,7 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { problemOf } from '../../../server/errors.ts';
 import type { DesignRequest } from '../../../server/operations/index.ts';
+import { smallModel } from '../../schema/invented-models.ts';
 import { easyRequest, type Lab, openLab, refusalOf } from './lab.ts';
 
 let lab: Lab;
@@ -44,6 +45,15 @@ describe('a design request', () => {
     expect((await lab.operations.node(mine(), cached.id))?.type).toBe('DesignRequest');
     expect((await ask(cached.asked)).designId).toBe(cached.designId);
     expect(await lab.operations.findRequest(mine(), `req_${'0'.repeat(64)}`)).toBeNull();
+  });
+
+  it('[property] that was answered from the store is not, once the chip has moved on', async () => {
+    expect((await ask(easyRequest())).cached).toBe(true);
+    const model = { ...smallModel(), temperatureC: 21 };
+    await lab.operations.reviseChip(mine(), { chip: 'X1', expectedRevision: 1, model });
+    const anew = await ask(easyRequest());
+    expect(anew).toMatchObject({ state: 'QUEUED', cached: false });
+    await lab.compute(anew);
   });
 
   it('[property] that closed form refuses leaves no row, and what it offers is taken', async () => {
@@ -105,7 +115,7 @@ describe('a design request', () => {
   });
 
   it('[property] for another chip revision than the head is refused with the same request at the head', async () => {
-    expect(await refusalOf(ask({ ...easyRequest(), chipRevision: 2 }))).toMatchObject({
+    expect(await refusalOf(ask({ ...easyRequest(), chipRevision: 3 }))).toMatchObject({
       code: 'NOT_FOUND',
       pointer: '/chipRevision',
     });
@@ -113,7 +123,7 @@ describe('a design request', () => {
       code: 'NOT_FOUND',
       pointer: '/chip',
     });
-    expect((await ask({ ...easyRequest(), chipRevision: 1 })).cached).toBe(true);
+    expect((await ask({ ...easyRequest(), chipRevision: 2 })).cached).toBe(true);
   });
 
   it('[property] with a key answers the same request again, from the header or the body, and refuses another body', async () => {
