@@ -6,6 +6,7 @@ import { registerCurves } from './curves.ts';
 import { registerDesignRequests } from './design-requests.ts';
 import { registerDesigns } from './designs.ts';
 import { registerHistory } from './history.ts';
+import { registerPull } from './pull.ts';
 import { registerReleases } from './releases.ts';
 import type { RestDeps } from './rest.ts';
 import { registerSpecificationChecks } from './specification-checks.ts';
@@ -26,6 +27,7 @@ export function registerRest(app: FastifyInstance, parts: Omit<RestDeps, 'design
   registerDesigns(app, deps);
   registerCurves(app, deps);
   registerConfigurations(app, deps);
+  registerPull(app, deps);
   registerReleases(app, deps);
   registerHistory(app, deps);
 }

@@ -1,56 +1,36 @@
 /** Releases: what instruments pull, and how people publish. */
 import type { FastifyInstance, FastifyRequest } from 'fastify';
 import { z } from 'zod';
-import { NAME_PATTERN } from '../../schema/text.ts';
-import { badInput, notFound, tooManyOpen } from '../errors.ts';
+import { badInput } from '../errors.ts';
 import type { ReleaseRecord } from '../store/records.ts';
-import { releaseSheet, settingSheetCsv, settingSheetJson } from '../views/index.ts';
-import { connectionAnswer, publishBody, releaseAnswer, releasesAnswer, sheetAnswer } from './answers.ts';
-import { CONDITIONAL_HEADERS, describe, IDEMPOTENCY_HEADER, WAIT_HEADER } from './describe.ts';
+import type { ReleaseHead } from '../store/store.ts';
+import { connectionAnswer, publishBody, releaseAnswer, releasesAnswer } from './answers.ts';
+import { CONDITIONAL_HEADERS, describe, IDEMPOTENCY_HEADER } from './describe.ts';
 import { viewerOf } from './frame/index.ts';
-import { longPoll, waitOf } from './long-poll.ts';
 import { chipOf, paramOf, serialParams, writeOptionsOf } from './parameters.ts';
 import { expectationOf, expectedNumber, withPresentTag } from './preconditions.ts';
-import { matchesAny, splitSuffix } from './protocol/index.ts';
+import { splitSuffix } from './protocol/index.ts';
+import { RELEASES_PATH, RELEASES_TAG, releaseTag, SHEET_OFFERS } from './pull.ts';
 import { listAskOf, pageQuery, readQuery, withMembers } from './query.ts';
 import { answerPage, recordText } from './record-answers.ts';
-import {
-  answerJson,
-  answerTagged,
-  answerWritten,
-  CSV_OFFER,
-  JSON_OFFER,
-  JSON_TYPE,
-  representationFor,
-  TAG_HASH_DIGITS,
-  tagsOf,
-} from './reply.ts';
+import { answerJson, answerWritten, JSON_TYPE } from './reply.ts';
 import { type RestDeps, wiringOf } from './rest.ts';
-import { releaseTopic } from './waiting.ts';
 import { releasesWire } from './wire.ts';
 
-const TAG = 'Releases';
-const PATH = '/v1/chips/:serial/releases';
 const pageOnly = z.strictObject(pageQuery);
 const nameParams = serialParams.extend({
   name: z.string().describe('Name of the release, usually `current`.'),
 });
-const pullParams = serialParams.extend({
-  name: z.string().describe('Name of the release, usually `current`, optionally with `.json` or `.csv`.'),
-});
-const OFFERS = [JSON_OFFER, CSV_OFFER];
-
-/** Names release, representation and layout version: the bytes follow from these three. */
-const tagOf = (release: ReleaseRecord, suffix: string): string =>
-  `"${release.sequence}.${release.version.contentHash.slice(0, TAG_HASH_DIGITS)}.${suffix}1"`;
+const tagOf = ({ sequence, version }: ReleaseRecord, suffix: string): string =>
+  releaseTag({ sequence, contentHash: version.contentHash }, suffix);
 
 export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
   const { operations } = deps;
 
-  app.get(PATH, {
+  app.get(RELEASES_PATH, {
     config: { access: 'release.read' },
     schema: describe({
-      tag: TAG,
+      tag: RELEASES_TAG,
       summary: 'Every release name of a chip and what it points at',
       params: serialParams,
       headers: CONDITIONAL_HEADERS,
@@ -67,10 +47,10 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
     },
   });
 
-  app.get(`${PATH}/:name/log`, {
+  app.get(`${RELEASES_PATH}/:name/log`, {
     config: { access: 'release.read' },
     schema: describe({
-      tag: TAG,
+      tag: RELEASES_TAG,
       summary: 'Everything a release name ever pointed at, newest first',
       params: nameParams,
       query: pageOnly,
@@ -90,64 +70,10 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
     },
   });
 
-  app.get(`${PATH}/:name`, {
-    config: { access: 'release.read' },
-    schema: describe({
-      tag: TAG,
-      summary: 'Pull the released setting sheet',
-      about:
-        'Every driver channel of the chip, unused ones at 0 mA: a channel that is not set keeps its last current. With `Prefer: wait=N` the answer waits for the next release than the one named in `If-None-Match`, or for the first one. Light in the chip may be invisible and harmful, and hot chips are damaged by too much current: what is set is the responsibility of whoever runs the bench, under the rules of the laser safety officer and the data sheet of the chip.',
-      params: pullParams,
-      headers: { ...CONDITIONAL_HEADERS, ...WAIT_HEADER },
-      answers: {
-        200: { about: 'The sheet.', content: { [JSON_TYPE]: sheetAnswer, 'text/csv': z.string() } },
-        304: { about: 'Unchanged.' },
-      },
-      problems: ['NOT_FOUND', 'NOT_ACCEPTABLE', 'PRECONDITION_FAILED', 'TOO_MANY_OPEN'],
-    }),
-    handler: async (request, reply) => {
-      const { stem: name, suffix } = splitSuffix(paramOf(request, 'name'), OFFERS);
-      const offer = representationFor(request, OFFERS, suffix);
-      const seconds = waitOf(request);
-      const release =
-        seconds === null ? await find(request, name) : await awaitNews(request, name, offer.suffix, seconds);
-      if (!release) {
-        const chip = await chipOf(request, operations);
-        throw notFound(`release ${name.slice(0, 64)} of chip ${chip.serial} yet`);
-      }
-      return answerTagged(request, reply, {
-        etag: tagOf(release, offer.suffix),
-        mediaType: offer.contentType,
-        fileName: `${release.chipSerial}.${release.name}.${release.sequence}.${offer.suffix}`,
-        render: () => {
-          const sheet = releaseSheet(release);
-          return offer.suffix === 'csv' ? settingSheetCsv(sheet) : JSON.stringify(settingSheetJson(sheet));
-        },
-      });
-
-      async function awaitNews(asked: FastifyRequest, wanted: string, representation: string, wait: number) {
-        const known = tagsOf(asked, 'if-none-match');
-        // A chip that does not exist will not release anything: 404 now.
-        const first = await find(asked, wanted);
-        if (!first) await chipOf(asked, operations);
-        const waited = await longPoll(asked, reply, deps, {
-          topic: releaseTopic(paramOf(asked, 'serial'), wanted),
-          seconds: wait,
-          read: () => find(asked, wanted),
-          // With `*` every release is known, so that none could ever be news: answered at once.
-          isSettled: (now) =>
-            now !== null && (!known || known === '*' || !matchesAny(known, tagOf(now, representation))),
-        });
-        if (!waited) throw tooManyOpen('long polls', operations.limits.longPolls);
-        return waited.value;
-      }
-    },
-  });
-
-  app.put(`${PATH}/:name`, {
+  app.put(`${RELEASES_PATH}/:name`, {
     config: { access: 'release.publish' },
     schema: describe({
-      tag: TAG,
+      tag: RELEASES_TAG,
       summary: 'Publish a version',
       about:
         'Points the release name at a version; going back is publishing an older version. Cautions of the version (a mask that is missed, an older chip revision) must be named in `accept`. `If-Match` publishes only over the release whose tag is given, `If-None-Match: *` only the first.',
@@ -175,7 +101,7 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
     handler: async (request, reply) => {
       const viewer = viewerOf(request);
       const name = paramOf(request, 'name');
-      if (splitSuffix(name, OFFERS).suffix !== null) {
+      if (splitSuffix(name, SHEET_OFFERS).suffix !== null) {
         throw badInput(
           'A release name must not end in .json or .csv: the pull could not tell it from a representation.',
           {
@@ -191,8 +117,8 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
       const { record, replayed } = await withPresentTag(
         () => operations.publishRelease(viewer, body, options),
         async () => {
-          const present = await find(request, name);
-          return present ? tagOf(present, 'json') : null;
+          const present = await headOf(request);
+          return present ? releaseTag(present, 'json') : null;
         },
       );
       const location = `/v1/chips/${chip.serial}/releases/${record.name}`;
@@ -201,12 +127,8 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
     },
   });
 
-  /** What can be no name has never been published. */
-  async function find(request: FastifyRequest, name: string): Promise<ReleaseRecord | null> {
-    const serial = paramOf(request, 'serial');
-    if (!NAME_PATTERN.test(name) || !NAME_PATTERN.test(serial)) return null;
-    return operations.findRelease(viewerOf(request), serial, name);
-  }
+  const headOf = (request: FastifyRequest): Promise<ReleaseHead | null> =>
+    operations.findReleaseHead(viewerOf(request), paramOf(request, 'serial'), paramOf(request, 'name'));
 
   async function expectedSequenceOf(
     request: FastifyRequest,
@@ -215,8 +137,8 @@ export function registerReleases(app: FastifyInstance, deps: RestDeps): void {
     const { kind, tags } = expectationOf(request);
     if (kind === 'NONE') return undefined;
     if (kind === 'NEW') return 0;
-    const present = await find(request, paramOf(request, 'name'));
-    const presentTags = present ? OFFERS.map((offer) => tagOf(present, offer.suffix)) : [];
+    const present = await headOf(request);
+    const presentTags = present ? SHEET_OFFERS.map((offer) => releaseTag(present, offer.suffix)) : [];
     return expectedNumber(tags ?? [], { number: present?.sequence ?? 0, tags: presentTags }, mayBeRepeat);
   }
 }

@@ -41,6 +41,7 @@ import { listen } from './notifications.ts';
 import {
   findRelease,
   findReleaseBySequence,
+  findReleaseHead,
   listReleaseLog,
   listReleases,
   listReleasesOfChips,
@@ -123,6 +124,7 @@ function operationsOf(database: Database, systemId: string): Operations {
     saveVersion: saveVersion(database),
 
     findRelease: findRelease(database),
+    findReleaseHead: findReleaseHead(database),
     findReleaseBySequence: findReleaseBySequence(database),
     listReleases: listReleases(database),
     listReleasesOfChips: listReleasesOfChips(database),

@@ -203,7 +203,17 @@ export interface Configurations {
   >;
 }
 
+/** What a release name points at now, without the setting. */
+export interface ReleaseHead {
+  readonly chipId: string;
+  readonly name: string;
+  readonly sequence: number;
+  readonly contentHash: string;
+}
+
 export interface Releases {
+  /** One prepared select of a few bytes. */
+  findReleaseHead(chipSerial: string, name: string): Promise<ReleaseHead | null>;
   /** The pull: one prepared select. */
   findRelease(chipSerial: string, name: string): Promise<ReleaseRecord | null>;
   findReleaseBySequence(chipId: string, name: string, sequence: number): Promise<ReleaseRecord | null>;

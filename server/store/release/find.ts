@@ -2,7 +2,7 @@ import { VERSION_COLUMNS, VERSION_JOINS } from '../configuration/version.ts';
 import { type Database, one, type Transaction } from '../database.ts';
 import { pageOf, readAfter, select } from '../page.ts';
 import type { ReleaseRecord, VersionRecord } from '../records.ts';
-import type { Releases } from '../store.ts';
+import type { ReleaseHead, Releases } from '../store.ts';
 
 /** A release's columns stand under other names than those of the version, which make up the rest of the row. */
 type Row = VersionRecord & {
@@ -62,6 +62,21 @@ export const findRelease =
     });
     return row && releaseOf(row);
   };
+
+/** Enough to tell whether what an instrument has is still the release: most pulls end here. */
+export const findReleaseHead =
+  (database: Database): Releases['findReleaseHead'] =>
+  (chipSerial, name) =>
+    one<ReleaseHead>(database.pool, {
+      name: 'find-release-head',
+      text: `select c.id as "chipId", h.name, h.sequence, v.content_hash as "contentHash"
+        from chip c
+        join release_head h on h.chip_id = c.id
+        join release e on e.chip_id = h.chip_id and e.name = h.name and e.sequence = h.sequence
+        join configuration_version v on v.id = e.version_id
+        where c.serial = $1 and h.name = $2`,
+      values: [chipSerial, name],
+    });
 
 export async function readRelease(
   on: Database['pool'] | Transaction,
