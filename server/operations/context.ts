@@ -28,8 +28,6 @@ export interface Context {
   modelOf(revision: ChipRevisionRecord): ChipModel;
   /** @throws ProblemError NOT_FOUND at `/chip` */
   chipBySerial(serial: string): Promise<ChipRecord>;
-  /** As it was when last read; its head may have moved on. */
-  rememberedChip(serial: string): ChipRecord | undefined;
 }
 
 /** A map that forgets what was not used for longest. */
@@ -58,15 +56,11 @@ const REMEMBERED_DESIGNS = 100;
 /** Revisions remembered; each may be 0.7 MB with a full crosstalk matrix of 256 channels. */
 const REMEMBERED_REVISIONS = 64;
 
-/** More than a lab owns. */
-const REMEMBERED_CHIPS = 1_000;
-
 export function createContext(deps: OperationsDeps, limits: Limits): Context {
   const { store, version, clock = Date.now } = deps;
   const byId = recentMap<string, ChipRevisionRecord>(REMEMBERED_REVISIONS);
   const byNumber = recentMap<string, ChipRevisionRecord>(REMEMBERED_REVISIONS);
   const designs = recentMap<string, DesignRecord>(REMEMBERED_DESIGNS);
-  const chips = recentMap<string, ChipRecord>(REMEMBERED_CHIPS);
   const models = new WeakMap<ChipModelInput, ChipModel>();
 
   function remember(record: ChipRevisionRecord): ChipRevisionRecord {
@@ -110,9 +104,7 @@ export function createContext(deps: OperationsDeps, limits: Limits): Context {
     async chipBySerial(serial) {
       const chip = await store.findChip(serial);
       if (chip === null) throw notFound(`chip ${serial}`, '/chip', serial);
-      chips.set(serial, chip);
       return chip;
     },
-    rememberedChip: (serial) => chips.get(serial),
   };
 }

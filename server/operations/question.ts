@@ -55,17 +55,10 @@ function wouldBeAccepted(body: unknown, model: ChipModel): boolean {
   }
 }
 
-/**
- * @param chipOf where to take the chip from: the store, unless its head is checked later
- * @throws ProblemError for everything that is no understandable request at the chip's head revision
- */
-export async function understand(
-  context: Context,
-  body: unknown,
-  chipOf: (serial: string) => Promise<ChipRecord> = context.chipBySerial,
-): Promise<Question> {
+/** @throws ProblemError for everything that is no understandable request at the chip's head revision */
+export async function understand(context: Context, body: unknown): Promise<Question> {
   const input = readInput(requestDesignRule, body);
-  const chip = await chipOf(input.chip);
+  const chip = await context.chipBySerial(input.chip);
   const asked = askedOf(body);
   requireHead(input, chip, asked);
   const revision = await context.headRevision(chip);

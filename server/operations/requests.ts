@@ -22,25 +22,6 @@ async function answered(context: Context, question: Question): Promise<DesignRec
   throw new ProblemError(problemFor(refusal, question.asked, question.model));
 }
 
-/**
- * A repeat in one select: the chip is taken as it was last seen, and the select says whether it still is so. Null for
- * everything else, bad input included: the long way says what is wrong.
- */
-async function answeredFast(context: Context, body: unknown): Promise<DesignRequest | null> {
-  const serial = typeof body === 'object' && body !== null && 'chip' in body ? body.chip : undefined;
-  const chip = typeof serial === 'string' ? context.rememberedChip(serial) : undefined;
-  if (chip === undefined) return null;
-  let question: Question;
-  try {
-    question = await understand(context, body, async () => chip);
-  } catch (error) {
-    if (error instanceof ProblemError) return null;
-    throw error;
-  }
-  const design = await context.store.findDesignAtHead(question.hash, chip.serial, chip.headRevision);
-  return design && cachedRequest(design, chip, question.revision);
-}
-
 async function submit(
   context: Context,
   viewer: Viewer,
@@ -146,10 +127,6 @@ export function requestOperations(context: Context): RequestOperations {
   return {
     async requestDesign(viewer, body, options) {
       authorise(viewer, 'design.request');
-      if (options?.idempotencyKey === undefined && !hasKey(body)) {
-        const fast = await answeredFast(context, body);
-        if (fast !== null) return fast;
-      }
       const question = await understand(context, body);
       const idempotency = idempotencyOf('requestDesign', question.input, body, options);
       if (idempotency === undefined) {
@@ -203,12 +180,6 @@ export function requestOperations(context: Context): RequestOperations {
       });
     },
   };
-}
-
-function hasKey(body: unknown): boolean {
-  return (
-    typeof body === 'object' && body !== null && 'idempotencyKey' in body && body.idempotencyKey !== null
-  );
 }
 
 function alreadyFinished(state: string, id: string): ProblemError {

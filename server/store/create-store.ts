@@ -33,7 +33,7 @@ import {
   listVersionsOfDesign,
 } from './configuration/version.ts';
 import { type Database, openDatabase, type StoreLogger } from './database.ts';
-import { findDesign, findDesignAtHead, findDesigns, findRefusal } from './design/find.ts';
+import { findDesign, findDesigns, findRefusal } from './design/find.ts';
 import { listDesigns } from './design/list.ts';
 import { findHistoryEntry, listHistory } from './history/list.ts';
 import { migrate } from './migrate.ts';
@@ -95,7 +95,6 @@ function operationsOf(database: Database, systemId: string): Operations {
     reviseChip: reviseChip(database),
 
     findDesign: findDesign(database),
-    findDesignAtHead: findDesignAtHead(database),
     findDesigns: findDesigns(database),
     findRefusal: findRefusal(database),
     listDesigns: listDesigns(database),

@@ -125,8 +125,6 @@ export type Submitted =
 export interface Designs {
   /** The fast path: one prepared select. */
   findDesign(id: string): Promise<DesignRecord | null>;
-  /** As `findDesign`, but null as well when the chip's head is another revision by now. One prepared select, too. */
-  findDesignAtHead(id: string, chipSerial: string, headRevision: number): Promise<DesignRecord | null>;
   findDesigns(ids: readonly string[]): Promise<readonly DesignRecord[]>;
   findRefusal(id: string): Promise<Problem | null>;
   listDesigns(

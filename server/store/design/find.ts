@@ -28,16 +28,6 @@ export const findDesign =
   (id) =>
     readDesign(database.pool, id);
 
-/** The whole cached answer in one prepared select: the design, if the chip still is at the revision it was asked for. */
-export const findDesignAtHead =
-  (database: Database): Designs['findDesignAtHead'] =>
-  (id, chipSerial, headRevision) =>
-    one<DesignRecord>(database.pool, {
-      name: 'find-design-at-head',
-      text: `${DESIGN_FROM} where id = $1 and exists (select 1 from chip where serial = $2 and head_revision = $3)`,
-      values: [id, chipSerial, headRevision],
-    });
-
 export const findRefusal =
   (database: Database): Designs['findRefusal'] =>
   (id) =>
