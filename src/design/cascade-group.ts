@@ -9,8 +9,6 @@ import { Refusal } from '../errors.ts';
 import type { Family, FamilyPlans, FilterPlan, OutputPort } from '../filter/index.ts';
 import {
   type CascadeCell,
-  type OmegaMask,
-  optimiseCascade,
   productOf,
   sectionCount,
   sectionOf,
@@ -18,19 +16,15 @@ import {
 } from '../synthesis/index.ts';
 import type { Group } from './alternatives.ts';
 import { orderOn } from './capacity.ts';
+import { optimiseOver, optionsFor } from './cascade-optimisation.ts';
 import type { TransferFunctionRecord } from './design.ts';
 import { judge, otherPort } from './judge.ts';
 import { insertionLossOf, isDark, parkAngle, type Realisation, usesBothOutputs } from './realisation.ts';
 import { darkRecord, transferFunctionRecord } from './records.ts';
+import { tradeOffOf } from './trade-off.ts';
 
 /** Most selective first: it needs the fewest cells. */
 const PREFERENCE: readonly Family[] = ['ELLIPTIC', 'CHEBYSHEV_II', 'CHEBYSHEV_I', 'BUTTERWORTH'];
-
-const TURN = 2 * Math.PI;
-
-/** Kept in reserve within passbands and stopbands for what the driver's rounding will add, dB. */
-const PASS_RESERVE_DB = 0.02;
-const STOP_RESERVE_DB = 0.1;
 
 export function cascadeGroup(
   families: readonly FamilyPlans[],
@@ -74,20 +68,39 @@ function plansTried(families: readonly FamilyPlans[], mostOrder: number): Filter
 function realiseCascade(plan: FilterPlan, chip: ChipModel, onProgress: (part: number) => void): Realisation {
   if (usesBothOutputs(plan)) refuseBothOutputs();
   const outputs: OutputPort[] = Array.from({ length: sectionCount(plan.order) }, () => plan.output);
+  const options = optionsFor(chip);
   const exact = synthesiseSectionCascade(plan.filter, outputs);
-  const first = attempt(plan, exact.cells, chip, [`Exact sections: ${exact.reason}`]);
-  const optimised = optimiseOver(plan, outputs, chip, onProgress);
+  const tradeOff = (tell: (part: number) => void) =>
+    tradeOffOf(plan, outputs, { ...options, onProgress: tell }, chip);
+  const first = attempt(plan, exact.cells, chip, [`Exact sections: ${exact.reason}`], tradeOff);
+  const optimised = optimiseOver(plan, outputs, chip, { ...options, onProgress });
   const lossless = optimised.cells.map((cell) => withoutLosses(cell));
-  const second = attempt(plan, lossless, chip, [
-    optimised.reason,
-    `Exact sections would lose ${exact.insertionLossDb.toFixed(2)} dB.`,
-  ]);
+  const second = attempt(
+    plan,
+    lossless,
+    chip,
+    [
+      optimised.reason,
+      `Exact sections would lose ${exact.insertionLossDb.toFixed(2)} dB.`,
+      ...lossRemark(chip),
+    ],
+    tradeOff,
+  );
   if (first instanceof Refusal || second instanceof Refusal) {
     const open = [second, first].find((one) => !(one instanceof Refusal));
     if (open) return open as Realisation;
     throw first;
   }
   return isBetter(second, first, chip) ? second : first;
+}
+
+/** The optimum of a lossy chip is not that of a lossless one; whoever looks at the CIRCUIT stage should know. */
+function lossRemark({ losses }: ChipModel): string[] {
+  return losses.unitDelayLossDb + losses.couplerExcessLossDb > 0
+    ? [
+        "Couplings and phases are those that serve the mask with this chip's losses; without loss the same circuit is another filter.",
+      ]
+    : [];
 }
 
 function refuseBothOutputs(): never {
@@ -104,6 +117,7 @@ function attempt(
   cells: readonly CascadeCell[],
   chip: ChipModel,
   remarks: readonly string[],
+  tradeOff: NonNullable<Realisation['tradeOff']>,
 ): Realisation | Refusal {
   try {
     const placed = fitToChip(
@@ -120,6 +134,7 @@ function attempt(
       placed,
       onChip: judge(withChipLosses(placed.circuit, chip), plan.mask, chip.fsrGhz),
       remarks,
+      tradeOff,
       transferFunctions: () => recordsOf(plan, cells, isDark(placed, otherPort(plan.output))),
     };
   } catch (error) {
@@ -133,52 +148,6 @@ function isBetter(a: Realisation, b: Realisation, chip: ChipModel): boolean {
   if (a.onChip.met !== b.onChip.met) return a.onChip.met;
   if (!a.onChip.met) return a.onChip.worstMarginDb > b.onChip.worstMarginDb;
   return (insertionLossOf(a, chip) ?? 0) < (insertionLossOf(b, chip) ?? 0);
-}
-
-function optimiseOver(
-  plan: FilterPlan,
-  outputs: readonly OutputPort[],
-  chip: ChipModel,
-  onProgress: (part: number) => void,
-) {
-  const reach = ringReach(chip);
-  const options = {
-    losses: { ringLossDb: chip.losses.unitDelayLossDb, couplerExcessLossDb: chip.losses.couplerExcessLossDb },
-    minimumCoupling: Math.max(1e-3, reach.min),
-    maximumCoupling: reach.max,
-    onProgress,
-  };
-  const mask = omegaMaskOf(plan, chip.fsrGhz);
-  if (mask.reference === 'INPUT')
-    return optimiseCascade(plan.filter, outputs, mask, { ...options, goal: 'GREATEST_MARGIN' });
-  return optimiseCascade(plan.filter, outputs, mask, { ...options, goal: 'LEAST_LOSS' });
-}
-
-/** The reach that every ring coupler of the chip has. */
-function ringReach(chip: ChipModel): { min: number; max: number } {
-  const rings = chip.cells.flatMap((cell) =>
-    cell.couplers.filter((coupler) => coupler.element.startsWith('ring')),
-  );
-  return {
-    min: Math.max(0, ...rings.map((coupler) => coupler.minCoupling)),
-    max: Math.min(1, ...rings.map((coupler) => coupler.maxCoupling)),
-  };
-}
-
-function omegaMaskOf({ mask }: FilterPlan, fsrGhz: number): OmegaMask {
-  return {
-    reference: mask.reference,
-    bands: mask.bands.map((band) => ({
-      lowRad: (TURN * band.lowGhz) / fsrGhz,
-      highRad: (TURN * Math.min(band.highGhz, band.lowGhz + fsrGhz)) / fsrGhz,
-      ...(band.minTransmissionDb === undefined
-        ? {}
-        : { minTransmissionDb: Math.min(0, band.minTransmissionDb + PASS_RESERVE_DB) }),
-      ...(band.maxTransmissionDb === undefined
-        ? {}
-        : { maxTransmissionDb: band.maxTransmissionDb - STOP_RESERVE_DB }),
-    })),
-  };
 }
 
 /** The same couplings and phases without loss: what the transfer function and the CIRCUIT stage are of. */

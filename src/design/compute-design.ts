@@ -45,7 +45,8 @@ export function computeDesign(question: DesignQuestion, chip: ChipModel, hooks: 
   const ranked = rank(groups);
   const { group, setting } = firstThatSets(ranked, chip);
   tell(SET);
-  const design = designOf(group, setting, groups, chip, synthesis.architecture !== undefined);
+  const told = synthesis.architecture !== undefined;
+  const design = designOf(group, setting, groups, chip, told, (part) => tell(SET + (1 - SET) * part));
   tell(1);
   return design;
 }
@@ -73,6 +74,7 @@ function designOf(
   groups: readonly Group[],
   chip: ChipModel,
   told: boolean,
+  tellTradeOff: (part: number) => void,
 ): Design {
   const realisation: Realisation = chosen.best;
   const { plan, placed, architecture } = realisation;
@@ -92,6 +94,7 @@ function designOf(
     cells: placed.cells.map(cellRecord),
     circuit: placed.circuit,
     setting,
+    tradeOff: realisation.tradeOff?.(tellTradeOff) ?? [],
     centreGhz,
     mask: plan.mask,
     compliance: complianceOf(sources, plan.mask),

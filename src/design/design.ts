@@ -61,6 +61,14 @@ export interface Alternative {
   readonly reason: string;
 }
 
+/** What a cascade would lose if its stopband might begin further out. */
+export interface TradeOffRecord {
+  /** Distance of the stopband's edges from the centre, GHz. */
+  readonly stopEdgeGhz: number;
+  /** Null where no cascade found keeps the other demands. */
+  readonly insertionLossDb: number | null;
+}
+
 export interface Design {
   readonly order: number;
   readonly family: Family;
@@ -75,6 +83,8 @@ export interface Design {
   /** The lossless circuit with every parameter: what CIRCUIT simulates and the netlist is made of. */
   readonly circuit: CircuitParameters;
   readonly setting: Setting;
+  /** Cascades of one or two sections with one passband: loss against stop edge, on this chip. Empty for pairs. */
+  readonly tradeOff: readonly TradeOffRecord[];
   /** Middle of the passband, GHz from the reference frequency. */
   readonly centreGhz: number;
   /** What is judged: the mask asked for, or the one that the family's own parameters state. */

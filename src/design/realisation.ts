@@ -6,7 +6,7 @@ import { pairPoles, toSections } from '../filter/index.ts';
 import type { Compliance } from '../response/index.ts';
 import { powerExtremes, toDb } from '../response/index.ts';
 import { synthesiseAllPassPair } from '../synthesis/index.ts';
-import type { TransferFunctionRecord } from './design.ts';
+import type { TradeOffRecord, TransferFunctionRecord } from './design.ts';
 import { judge, otherPort, sourcesOf } from './judge.ts';
 import { darkRecord, transferFunctionRecord } from './records.ts';
 
@@ -18,6 +18,8 @@ export interface Realisation {
   readonly onChip: Compliance;
   /** What the realisation has to say beyond its figures. */
   readonly remarks: readonly string[];
+  /** Loss against stop edge, where there is one to report; takes seconds. */
+  readonly tradeOff?: (onProgress: (part: number) => void) => readonly TradeOffRecord[];
   readonly transferFunctions: () => Readonly<Record<OutputPort, TransferFunctionRecord>>;
 }
 
