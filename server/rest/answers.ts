@@ -251,6 +251,7 @@ export const designAnswer = named(
     architecture: z.enum(ARCHITECTURES),
     reason: z.string(),
     alternatives: z.array(alternative),
+    tradeOff: z.array(z.strictObject({ stopEdgeGhz: z.number(), insertionLossDb: z.number().nullable() })),
     createdAt: time,
     chip: z.string().nullable().describe('Serial.'),
     chipRevision: z.int(),

@@ -67,6 +67,9 @@ const pathOf = (pattern: string): string =>
     .replace(':name', 'none')
     .replace(':number', '1');
 
+/** A notice of the database takes milliseconds; a busy machine gets a second. */
+const NOTICE_MS = 1000;
+
 let service: Service;
 const seen: { method: string; url: string }[] = [];
 
@@ -167,11 +170,13 @@ describe('tokens', () => {
     expect(answer.json.detail).toMatch(/expired/);
   });
 
-  it('is 401 at once when it is revoked, although it was remembered', async () => {
+  it('is 401 within a second of its revocation, although it was remembered', async () => {
     const { token, id } = await service.newToken('READER');
     expect((await service.call('/v1/me', { token })).status).toBe(200);
     await service.revoke(id);
-    const answer = await service.call('/v1/me', { token });
+    const end = performance.now() + NOTICE_MS;
+    let answer = await service.call('/v1/me', { token });
+    while (answer.status === 200 && performance.now() < end) answer = await service.call('/v1/me', { token });
     expect(answer.status).toBe(401);
     expect(answer.json.detail).toMatch(/revoked/);
   });
