@@ -46,6 +46,7 @@ export function launchWrapped(launch: Launch): Promise<Launched> {
   // Not the child's 'close': that waits for our own end of the pipe as well.
   const ended = Promise.all([once(child, 'exit'), once(words, 'close')]);
   let log = '';
+  let isReady = false;
   return new Promise((answer) => {
     const refuse = (why: string) => {
       clearTimeout(timer);
@@ -59,7 +60,9 @@ export function launchWrapped(launch: Launch): Promise<Launched> {
     );
     words.on('data', (chunk: Buffer) => {
       log = (log + chunk).slice(-LOG_KEPT);
-      if (!log.includes('ready to accept connections')) return;
+      // Once: what it says while it ends must not undo that `stop` stays for it.
+      if (isReady || !log.includes('ready to accept connections')) return;
+      isReady = true;
       clearTimeout(timer);
       // Neither the child nor its pipes keep this process alive once it has nothing else to do.
       child.unref();
@@ -69,6 +72,7 @@ export function launchWrapped(launch: Launch): Promise<Launched> {
         started: true,
         stop: async () => {
           child.ref();
+          words.ref();
           pipe.end();
           await ended;
         },
