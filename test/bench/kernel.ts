@@ -14,15 +14,16 @@ import {
   createKernel,
   evaluateInto,
 } from '../../src/circuit/index.ts';
-import type { BenchRow } from './row.ts';
+import type { BenchRow, Effort, Topic } from './row.ts';
+import { median } from './statistics.ts';
 
 const POINTS = 4001;
-const ROUNDS = 2000;
 const K = [0.3, 0.4, 0.5, 0.6, 0.3, 0.4, 0.5, 0.6];
 const PHASES = [-1, -0.5, 0, 0.5, -1, -0.5, 0, 0.5];
 const ARM_PHASES = [0.2, 1.2] as const;
 /** Sums over 4,001 fields of order 1, each right to some 1e-15. */
 const SAME_SUM = 1e-8;
+const LOSS_DB = 0.2;
 
 interface Timing {
   readonly least: number;
@@ -52,7 +53,7 @@ function benchCircuit(lossDb: number): CircuitParameters {
   return { cells: [cell], join: 'OUT1' };
 }
 
-function timeKernel(lossDb: number, plain: boolean): Timing {
+function timeKernel(lossDb: number, plain: boolean, rounds: number): Timing {
   const kernel = plain
     ? createKernel(benchCircuit(lossDb), createPlainBlocks())
     : createKernel(benchCircuit(lossDb));
@@ -60,7 +61,7 @@ function timeKernel(lossDb: number, plain: boolean): Timing {
   const out = createFieldBuffers(POINTS);
   const times: number[] = [];
   // the first tenth warms the compiler up
-  for (let round = -ROUNDS / 10; round < ROUNDS; round++) {
+  for (let round = -rounds / 10; round < rounds; round++) {
     const start = performance.now();
     evaluateInto(kernel, omega, out);
     if (round >= 0) times.push(1e3 * (performance.now() - start));
@@ -69,11 +70,12 @@ function timeKernel(lossDb: number, plain: boolean): Timing {
   const sums = [out.out1Re, out.out1Im, out.out2Re, out.out2Im].map((part) =>
     part.reduce((sum, x) => sum + x, 0),
   );
-  return { least: times[0]!, median: times[ROUNDS / 2]!, sums };
+  return { least: times[0]!, median: median(times), sums };
 }
 
 const here = (file: string) => fileURLToPath(new URL(file, import.meta.url));
-const peerArguments = [ROUNDS, POINTS, ...ARM_PHASES, K.length, ...K, ...PHASES].map(String);
+const peerArguments = (rounds: number): string[] =>
+  [rounds, POINTS, ...ARM_PHASES, K.length, ...K, ...PHASES].map(String);
 
 function parse(numbers: readonly string[]): Timing {
   const [least, median, ...sums] = numbers.map(Number);
@@ -81,10 +83,10 @@ function parse(numbers: readonly string[]): Timing {
 }
 
 /** NumPy as it picks its own code for this processor. */
-function timeNumPy(): ReadonlyMap<string, Timing> {
+function timeNumPy(rounds: number): ReadonlyMap<string, Timing> {
   const { OPENBLAS_CORETYPE, OPENBLAS_L2_SIZE, ...env } = process.env;
   try {
-    const text = execFileSync('python3', [here('kernel.py'), ...peerArguments], {
+    const text = execFileSync('python3', [here('kernel.py'), ...peerArguments(rounds)], {
       encoding: 'utf8',
       env,
       stdio: 'pipe',
@@ -101,55 +103,111 @@ function timeNumPy(): ReadonlyMap<string, Timing> {
   }
 }
 
-function timeC(flags: readonly string[]): Timing | null {
-  const folder = mkdtempSync(join(tmpdir(), 'kernel-'));
-  try {
-    const program = join(folder, 'kernel');
-    execFileSync('gcc', [...flags, here('kernel.c'), '-o', program, '-lm'], { stdio: 'pipe' });
-    return parse(execFileSync(program, peerArguments, { encoding: 'utf8' }).trim().split(' '));
-  } catch {
-    return null;
-  } finally {
-    rmSync(folder, { recursive: true, force: true });
-  }
+interface Program {
+  readonly name: string;
+  readonly flags: string;
+  readonly file: string;
 }
 
-function row(ours: Timing, peer: Timing, peerName: string, note: string): BenchRow {
-  const same =
-    peer.sums.length === 4 && peer.sums.every((sum, i) => Math.abs(sum - ours.sums[i]!) < SAME_SUM);
-  if (!same)
-    throw new Error(`${peerName} computes something else: ${peer.sums.join(' ')} for ${ours.sums.join(' ')}`);
-  const medians = `medians ${ours.median.toFixed(0)} and ${peer.median.toFixed(0)} µs`;
+const COMPILERS: readonly (readonly [string, readonly string[]])[] = [
+  ['C, scalar', ['-O2', '-fno-tree-vectorize']],
+  ['C, 128-bit SIMD', ['-O3', '-ffast-math']],
+  ['C, -march=native', ['-O3', '-ffast-math', '-march=native']],
+];
+
+/** Every way of compiling that works here. */
+function compileC(folder: string): Program[] {
+  return COMPILERS.flatMap(([name, flags], index) => {
+    const file = join(folder, `kernel${index}`);
+    try {
+      execFileSync('gcc', [...flags, here('kernel.c'), '-o', file, '-lm'], { stdio: 'pipe' });
+      return [{ name, flags: flags.join(' '), file }];
+    } catch {
+      return [];
+    }
+  });
+}
+
+const timeC = ({ file }: Program, rounds: number): Timing =>
+  parse(execFileSync(file, peerArguments(rounds), { encoding: 'utf8' }).trim().split(' '));
+
+/** One side of a row, and how it is timed once. */
+interface Side {
+  readonly name: string;
+  readonly note: string;
+  readonly timings: Timing[];
+}
+
+/** The least of all; the median of the runs' medians. */
+function together({ name, timings }: Side): Timing {
+  const sums = timings[0]?.sums;
+  if (sums === undefined) throw new Error(`${name} was not timed`);
   return {
-    name: 'response kernel, 8 rings × 4,001 points',
-    ours: ours.least,
-    peer: peer.least,
-    peerName,
-    unit: 'µs',
-    ratio: peer.least / ours.least,
-    note: note === '' ? medians : `${note}; ${medians}`,
+    least: Math.min(...timings.map((timing) => timing.least)),
+    median: median(timings.map((timing) => timing.median)),
+    sums,
   };
 }
 
-/** Rows for every peer that is there. Takes some ten seconds; least of many runs, medians in the note. */
-export async function benchKernel(): Promise<BenchRow[]> {
-  const ours = timeKernel(0, false);
-  const rows = [...timeNumPy()].map(([name, timing]) =>
-    row(ours, timing, `NumPy, ${name.replaceAll('_', ' ')}`, ''),
-  );
-  const compilers: readonly (readonly [string, readonly string[]])[] = [
-    ['C, scalar', ['-O2', '-fno-tree-vectorize']],
-    ['C, 128-bit SIMD', ['-O3', '-ffast-math']],
-    ['C, -march=native', ['-O3', '-ffast-math', '-march=native']],
-  ];
-  for (const [name, flags] of compilers) {
-    const timing = timeC(flags);
-    if (timing !== null) rows.push(row(ours, timing, name, `gcc ${flags.join(' ')}`));
+function row(ours: Timing, side: Side): BenchRow {
+  const peer = together(side);
+  const same =
+    peer.sums.length === 4 && peer.sums.every((sum, i) => Math.abs(sum - ours.sums[i]!) < SAME_SUM);
+  if (!same)
+    throw new Error(
+      `${side.name} computes something else: ${peer.sums.join(' ')} for ${ours.sums.join(' ')}`,
+    );
+  const medians = `medians ${ours.median.toFixed(0)} and ${peer.median.toFixed(0)} µs`;
+  return {
+    name: 'response kernel',
+    ours: ours.least,
+    peer: peer.least,
+    peerName: side.name,
+    unit: 'µs',
+    ratio: peer.least / ours.least,
+    note: side.note === '' ? medians : `${side.note}; ${medians}`,
+  };
+}
+
+function sideNamed(sides: Map<string, Side>, name: string, note: string): Side {
+  const side = sides.get(name) ?? { name, note, timings: [] };
+  sides.set(name, side);
+  return side;
+}
+
+const PLAIN = 'the plain typed-array loop';
+
+/** Ours and every peer that is there take turns. Some ten seconds, quick one; least of all rounds, medians in the note. */
+export async function benchKernel({ quick }: Effort): Promise<Topic> {
+  const [turns, rounds] = quick ? [2, 100] : [5, 500];
+  const sides = new Map<string, Side>();
+  const ours = sideNamed(new Map(), 'ours', '');
+  const lossy = sideNamed(new Map(), 'ours with loss', '');
+  const plainLossy = sideNamed(new Map(), PLAIN, 'with loss');
+  const folder = mkdtempSync(join(tmpdir(), 'kernel-'));
+  let programs: readonly Program[] = [];
+  let hasNumPy = false;
+  try {
+    programs = compileC(folder);
+    for (let turn = 0; turn < turns; turn++) {
+      ours.timings.push(timeKernel(0, false, rounds));
+      for (const [form, timing] of timeNumPy(rounds)) {
+        hasNumPy = true;
+        sideNamed(sides, `NumPy, ${form.replaceAll('_', ' ')}`, '').timings.push(timing);
+      }
+      for (const program of programs)
+        sideNamed(sides, program.name, `gcc ${program.flags}`).timings.push(timeC(program, rounds));
+      sideNamed(sides, PLAIN, 'same formulas without WebAssembly').timings.push(timeKernel(0, true, rounds));
+      lossy.timings.push(timeKernel(LOSS_DB, false, rounds));
+      plainLossy.timings.push(timeKernel(LOSS_DB, true, rounds));
+    }
+  } finally {
+    rmSync(folder, { recursive: true, force: true });
   }
-  rows.push(
-    row(ours, timeKernel(0, true), 'the plain typed-array loop', 'same formulas without WebAssembly'),
-  );
-  const lossy = timeKernel(0.2, false);
-  rows.push(row(lossy, timeKernel(0.2, true), 'the plain typed-array loop', 'with loss'));
-  return rows;
+  const mine = together(ours);
+  return {
+    title: 'Response kernel, 8 rings × 4,001 points, both outputs; least time',
+    rows: [...[...sides.values()].map((side) => row(mine, side)), row(together(lossy), plainLossy)],
+    missing: [...(hasNumPy ? [] : ['python3 with NumPy']), ...(programs.length > 0 ? [] : ['gcc'])],
+  };
 }

@@ -5,7 +5,20 @@ export interface BenchRow {
   readonly peer: number;
   readonly peerName: string;
   readonly unit: string;
-  /** peer / ours for times: above 1, ours is the faster. */
+  /** Above 1, ours is the faster: peer / ours for times, ours / peer for rates. */
   readonly ratio: number;
   readonly note: string;
+}
+
+/** Rows of one topic, and what could not be measured here. */
+export interface Topic {
+  readonly title: string;
+  readonly rows: readonly BenchRow[];
+  /** Sentences: which peers are missing on this machine. */
+  readonly missing: readonly string[];
+}
+
+/** How long to measure. `quick` proves that everything runs; its figures are coarse. */
+export interface Effort {
+  readonly quick: boolean;
 }
