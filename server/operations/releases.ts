@@ -2,6 +2,7 @@
 import { DEFAULT_RELEASE, publishReleaseRule } from '../../schema/library.ts';
 import type { FieldProblem, Nearest } from '../../schema/problem.ts';
 import { NAME_PATTERN } from '../../schema/text.ts';
+import { STANDING_CAUTIONS } from '../../src/chip/index.ts';
 import { actingOf, authorise, type Viewer } from '../auth/index.ts';
 import { keyReused, notFound, preconditionFailed, refuse, staleChipRevision } from '../errors.ts';
 import type { ReleaseRecord, VersionRecord } from '../store/records.ts';
@@ -16,10 +17,11 @@ interface Risk {
   readonly text: string;
 }
 
-/** Whoever publishes takes what the setting warns of, and that a band is missed. */
+/** Whoever publishes takes what this very setting warns of, and that a band is missed. */
 async function risksOf(context: Context, version: VersionRecord): Promise<Risk[]> {
   const risks = new Map<string, Risk>();
   for (const { code, text, channel } of version.setting.cautions) {
+    if (STANDING_CAUTIONS.includes(code)) continue;
     const where = channel === undefined ? '' : ` (channel ${channel})`;
     const known = risks.get(code);
     risks.set(code, {

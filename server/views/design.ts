@@ -12,7 +12,7 @@ import { bandView } from './specification.ts';
 
 /** Plain members; the large ones have views of their own. */
 export function designView(record: DesignRecord) {
-  const { order, family, architecture, reason, alternatives } = record.result;
+  const { order, family, architecture, reason, alternatives, tradeOff } = record.result;
   return {
     id: designId(record.id),
     hash: record.id,
@@ -23,6 +23,7 @@ export function designView(record: DesignRecord) {
     architecture,
     reason,
     alternatives,
+    tradeOff,
     createdAt: timeView(record.createdAt),
   };
 }

@@ -21,6 +21,9 @@ const LASER: Caution = {
     'the data sheets of chip and driver take precedence over this setting.',
 };
 
+/** Cautions that every setting carries: always shown, and nothing a person could decide by a release. */
+export const STANDING_CAUTIONS: readonly string[] = [LASER.code];
+
 /**
  * Depth to which field errors of the phases, rad, fill a null of a balanced interferometer, dB: a phase error δ of an arm
  * or a coupler puts δ/2 of the field into the null; independent errors add as squares.

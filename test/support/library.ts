@@ -202,6 +202,7 @@ export function inventedDesign(
     architecture: 'ALL_PASS_PAIR',
     reason: 'invented',
     alternatives: [],
+    tradeOff: [],
     output: 'OUT1',
     transferFunctions: { OUT1: record, OUT2: record },
     cells: [],
