@@ -2,7 +2,7 @@
 import type { z } from 'zod';
 import { pointerOf, valueAt, withEdits } from '../schema/pointer.ts';
 import type { FieldProblem, Nearest, NearestChange, ProblemCode, ProblemLimit } from '../schema/problem.ts';
-import { type ProblemError, refuse } from './errors.ts';
+import { type ProblemError, refuse } from './problem-error.ts';
 
 type Issue = z.core.$ZodIssue;
 

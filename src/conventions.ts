@@ -15,7 +15,7 @@
  */
 
 /** Speed of light in vacuum, m/s. Exact by definition (SI Brochure, 9th ed., 2019). */
-export const SPEED_OF_LIGHT = 299_792_458;
+const SPEED_OF_LIGHT = 299_792_458;
 
 /** nm·THz: λ[nm] = this / ν[THz]. */
 export const NM_THZ = SPEED_OF_LIGHT * 1e-3;

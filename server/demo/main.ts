@@ -27,6 +27,7 @@ await runProcess(
       ...config,
       dataFolder,
       adminToken,
+      openIntrospection: true,
       logLevel: process.env.LOG_LEVEL === undefined ? 'warn' : config.logLevel,
     }),
     async then({ url }) {

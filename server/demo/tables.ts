@@ -51,7 +51,7 @@ interface BandAnswer {
 type Row = readonly (string | number)[];
 
 /** Columns as wide as their widest entry; numbers right, words left. */
-export function table(head: Row, rows: readonly Row[]): string {
+function table(head: Row, rows: readonly Row[]): string {
   const all = [head, ...rows].map((row) => row.map(String));
   const widths = head.map((_, column) => Math.max(...all.map((row) => row[column]!.length)));
   const line = (row: readonly string[], source: Row): string =>

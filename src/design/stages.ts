@@ -23,7 +23,7 @@ import { figureBands, figuresFrom, type Sources, sourcesOf } from './judge.ts';
 const complexOf = ({ re, im }: ComplexValue): Complex => new Complex(re, im);
 
 /** The stored product form as the filter core reads it. */
-export function transferFunctionOf(record: TransferFunctionRecord): TransferFunction {
+function transferFunctionOf(record: TransferFunctionRecord): TransferFunction {
   return {
     zeros: record.zeros.map(complexOf),
     poles: record.poles.map(complexOf),

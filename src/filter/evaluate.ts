@@ -26,11 +26,14 @@ function layOut(roots: readonly Complex[]): Float64Array {
   return flat;
 }
 
-/** Π(e^{jΩ} − root) into out[0], out[1]. */
-function productInto(flat: Float64Array, omegaRad: number, out: Float64Array): void {
-  const half = Math.sin(omegaRad / 2);
-  const uRe = -2 * half * half;
-  const uIm = 2 * half * Math.cos(omegaRad / 2);
+/** Π(e^{jΩ} − root) into out[0], out[1]; u = e^{jΩ} − 1. */
+function productInto(
+  flat: Float64Array,
+  omegaRad: number,
+  uRe: number,
+  uIm: number,
+  out: Float64Array,
+): void {
   let re = 1;
   let im = 0;
   for (let at = 0; at < flat.length; at += 3) {
@@ -65,8 +68,12 @@ export function evaluateInto(
   const top = new Float64Array(2);
   const bottom = new Float64Array(2);
   for (let point = 0; point < omegaRad.length; point++) {
-    productInto(zeros, omegaRad[point]!, top);
-    productInto(poles, omegaRad[point]!, bottom);
+    const omega = omegaRad[point]!;
+    const half = Math.sin(omega / 2);
+    const uRe = -2 * half * half;
+    const uIm = 2 * half * Math.cos(omega / 2);
+    productInto(zeros, omega, uRe, uIm, top);
+    productInto(poles, omega, uRe, uIm, bottom);
     const tRe = top[0]! * filter.gain.re - top[1]! * filter.gain.im;
     const tIm = top[0]! * filter.gain.im + top[1]! * filter.gain.re;
     const scale = 1 / (bottom[0]! * bottom[0]! + bottom[1]! * bottom[1]!);

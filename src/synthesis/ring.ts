@@ -52,7 +52,7 @@ function ringField(ring: RingParameters, omegaRad: number): Complex {
 }
 
 /** Product of the fields of lossless rings at Ω. */
-export function armField(rings: readonly RingParameters[], omegaRad: number): Complex {
+function armField(rings: readonly RingParameters[], omegaRad: number): Complex {
   let field = new Complex(1, 0);
   for (const ring of rings) field = field.mul(ringField(ring, omegaRad));
   return field;

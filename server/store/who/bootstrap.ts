@@ -5,7 +5,7 @@ import type { Who } from '../store.ts';
 import { ensureActor } from './create-token.ts';
 
 /** Who acts when no person does: computations that end, the first token. */
-export const SYSTEM_NAME = 'ringbinder';
+const SYSTEM_NAME = 'ringbinder';
 const FIRST_ADMIN = 'first_admin';
 /** Beside the first admin token; a person's own token is the next step. */
 const ADMIN_NAME = 'admin';

@@ -163,7 +163,7 @@ function refuseUnused(spec: FamilySpecification): void {
 }
 
 /** Whether the band between the edges is what is stopped. */
-export function stopsBand(spec: FamilySpecification): boolean {
+function stopsBand(spec: FamilySpecification): boolean {
   return spec.shape === 'HIGH_PASS' || spec.shape === 'BAND_STOP';
 }
 
