@@ -18,6 +18,10 @@ const wholeNumber = (least: number, most: number) =>
     .transform(Number)
     .refine((value) => value >= least && value <= most, `a whole number from ${least} to ${most}`);
 
+const trueOrFalse = z
+  .enum(['true', 'false'], { error: 'true or false' })
+  .transform((text) => text === 'true');
+
 const isDatabaseUrl = (text: string): boolean => {
   try {
     return ['postgres:', 'postgresql:'].includes(new URL(text).protocol);
@@ -113,6 +117,11 @@ const VARIABLES = {
     z.string().min(1, 'the path of a file'),
     'File that a worker touches every second while it reaches the queue; for health checks.',
   ),
+  RINGBINDER_OPEN_INTROSPECTION: variable(
+    trueOrFalse,
+    'Whether the GraphQL schema may be asked about without a token. The demo opens it; records need a token in any case.',
+    'false',
+  ),
   RINGBINDER_TRUST_PROXY: variable(
     trustProxy,
     'Whether forwarded addresses are believed: `true`, `false`, or addresses and networks of the proxies, separated by commas.',
@@ -136,6 +145,7 @@ export interface Config {
   readonly queueLimit: number;
   readonly ratePerS: number;
   readonly heartbeatFile?: string;
+  readonly openIntrospection: boolean;
   readonly trustProxy: boolean | readonly string[];
 }
 
@@ -202,6 +212,7 @@ export function readConfig(environment: Readonly<Record<string, string | undefin
     queueLimit: read('RINGBINDER_QUEUE_LIMIT') as number,
     ratePerS: read('RINGBINDER_RATE_PER_S') as number,
     ...(heartbeatFile === undefined ? {} : { heartbeatFile }),
+    openIntrospection: read('RINGBINDER_OPEN_INTROSPECTION') as boolean,
     trustProxy: read('RINGBINDER_TRUST_PROXY') as boolean | readonly string[],
   };
   if (wrong.length > 0) throw new ConfigurationError(`Configuration: ${wrong.join('; ')}.`);

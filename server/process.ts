@@ -50,7 +50,16 @@ async function startApi(config: Config, store: Store, logger: Logger, closers: C
   const operations = createOperations({ store, version, limits });
   const authenticator = createAuthenticator({ store });
   closers.push(async () => authenticator.close());
-  const app = await buildApp({ store, operations, authenticator, config, logger, version });
+  const { openIntrospection } = config;
+  const app = await buildApp({
+    store,
+    operations,
+    authenticator,
+    config,
+    logger,
+    version,
+    openIntrospection,
+  });
   closers.push(() => app.close());
   await app.listen({ host: config.host, port: config.port });
   return urlOf(app.server.address() as AddressInfo);

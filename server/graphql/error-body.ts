@@ -39,9 +39,9 @@ function bodyOf(problem: Problem, { locations, path }: Partial<Place> = {}): Err
 
 /** A syntax or validation error of graphql itself. */
 export function bodyOfDocumentError(error: GraphQLError, places: Places | null): ErrorBody {
-  const node = error.nodes?.[0];
-  const path = node && places ? places.ofNode(node) : null;
-  const more = path === null ? {} : { pointer: pointerOf(path) };
+  const paths = (error.nodes ?? []).map((node) => places?.ofNode(node) ?? null);
+  const path = paths.find((one) => one !== null);
+  const more = path === undefined ? {} : { pointer: pointerOf(path) };
   return bodyOf(problemOf('BAD_INPUT', error.message, more), error);
 }
 

@@ -2,9 +2,10 @@
 import { existsSync, readdirSync, readFileSync } from 'node:fs';
 import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
+import { buildSchema, lexicographicSortSchema, printSchema } from 'graphql';
 
 /** What clients may rely on; new parts are added to it on purpose, by `scripts/publish-schema.ts`. */
-export const PUBLISHED_FILE = 'published.graphql';
+const PUBLISHED_FILE = 'published.graphql';
 
 /** The nearest folder or file of that path above this one: the compiled tree lies a level deeper than the sources. */
 export function findAbove(...path: readonly string[]): string {
@@ -23,4 +24,14 @@ export function readSdl(): string {
     .sort()
     .map((name) => readFileSync(join(folder, name), 'utf8'))
     .join('\n');
+}
+
+/** Path of the record of what has been published. */
+export function publishedFile(): string {
+  return join(dirname(findAbove('schema', 'query.graphql')), PUBLISHED_FILE);
+}
+
+/** As a client sees it, descriptions included, in an order that does not depend on files. */
+export function servedSdl(): string {
+  return `${printSchema(lexicographicSortSchema(buildSchema(readSdl())))}\n`;
 }
