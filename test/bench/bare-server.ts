@@ -8,6 +8,10 @@ import pg from 'pg';
 const TABLES = {
   design: 'select id, canonical, result, result_hash, created_at from design where id = $1',
   version: 'select id, number, setting, content_hash, created_at from configuration_version where id = $1',
+  // By the chip's serial; what tells whether anything changed.
+  head: `select h.name, h.sequence, v.content_hash from chip c join release_head h on h.chip_id = c.id
+    join release e on e.chip_id = h.chip_id and e.name = h.name and e.sequence = h.sequence
+    join configuration_version v on v.id = e.version_id where c.serial = $1 and h.name = 'current'`,
 } as const;
 
 /** As many as the service keeps. */
@@ -23,7 +27,7 @@ async function read(table: keyof typeof TABLES, id: string): Promise<unknown> {
   return rows[0];
 }
 
-for (const table of ['design', 'version'] as const) {
+for (const table of ['design', 'version', 'head'] as const) {
   app.get<{ Params: { id: string } }>(`/select/${table}/:id`, async (request) =>
     read(table, request.params.id),
   );
