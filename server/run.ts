@@ -72,11 +72,11 @@ export interface RunOptions {
   /** Changes what the environment says, before anything starts. */
   readonly adjust?: (config: Config) => Config;
   /** Once it serves; the process goes on serving afterwards, and ends when this fails. */
-  readonly then?: (running: RunningProcess) => Promise<void>;
+  readonly afterStart?: (running: RunningProcess) => Promise<void>;
 }
 
 /** Runs until a signal ends it: SIGTERM or SIGINT once ends cleanly, twice at once. */
-export async function runProcess(parts: Parts, { adjust, then }: RunOptions = {}): Promise<void> {
+export async function runProcess(parts: Parts, { adjust, afterStart }: RunOptions = {}): Promise<void> {
   try {
     const environment = readConfig(process.env);
     const config = adjust ? adjust(environment) : environment;
@@ -85,7 +85,7 @@ export async function runProcess(parts: Parts, { adjust, then }: RunOptions = {}
       logger.warn({ variable: name }, 'not a variable of this service: misspelt?');
     const running = await startProcess(config, parts, logger);
     endOnSignals(running, config, logger);
-    if (then) await then(running);
+    if (afterStart) await afterStart(running);
     tellTerminal(running);
   } catch (error) {
     const isConfiguration = error instanceof ConfigurationError;

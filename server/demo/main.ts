@@ -30,7 +30,7 @@ await runProcess(
       openIntrospection: true,
       logLevel: process.env.LOG_LEVEL === undefined ? 'warn' : config.logLevel,
     }),
-    async then({ url }) {
+    async afterStart({ url }) {
       if (url === null) throw new Error('the demo needs the API');
       await runTour(createClient(url, adminToken), plots, say);
       say(`\nThe service goes on until Ctrl-C; its data (${folder}) is for looking around only.`);

@@ -4,10 +4,10 @@ import type { PlacedCell } from '../chip/index.ts';
 import type { FilterSection, TransferFunction } from '../filter/index.ts';
 import type { ComplexValue, InterferometerRecord, SectionRecord, TransferFunctionRecord } from './design.ts';
 
-const valueOf = ({ re, im }: Complex): ComplexValue => ({ re, im });
+const plainOf = ({ re, im }: Complex): ComplexValue => ({ re, im });
 
 function sectionRecord({ zeros, poles, gain, peakDb }: FilterSection): SectionRecord {
-  return { zeros: zeros.map(valueOf), poles: poles.map(valueOf), gain: valueOf(gain), peakDb };
+  return { zeros: zeros.map(plainOf), poles: poles.map(plainOf), gain: plainOf(gain), peakDb };
 }
 
 export function transferFunctionRecord(
@@ -15,9 +15,9 @@ export function transferFunctionRecord(
   sections: readonly FilterSection[],
 ): TransferFunctionRecord {
   return {
-    zeros: filter.zeros.map(valueOf),
-    poles: filter.poles.map(valueOf),
-    gain: valueOf(filter.gain),
+    zeros: filter.zeros.map(plainOf),
+    poles: filter.poles.map(plainOf),
+    gain: plainOf(filter.gain),
     sections: sections.map(sectionRecord),
   };
 }
