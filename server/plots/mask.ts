@@ -43,6 +43,10 @@ function decibels(value: number): string {
   return `${String(Math.round(value * 100) / 100).replace('-', '\u2212')} dB`;
 }
 
+function fits(words: string, width: number, span: number): boolean {
+  return width > words.length * CHARACTER_WIDTH * span;
+}
+
 function placeWords(
   words: string,
   above: boolean,
@@ -53,7 +57,7 @@ function placeWords(
   const span = frame.right - frame.left;
   const length = words.length * CHARACTER_WIDTH * span;
   const middle = (from + to) / 2;
-  if (to - from > length) return { place: 'ALONG', wordsAt: middle };
+  if (fits(words, to - from, span)) return { place: 'ALONG', wordsAt: middle };
   if (above)
     return to + length > frame.right ? { place: 'LEFT', wordsAt: from } : { place: 'RIGHT', wordsAt: to };
   const beside = to - from > LINE_HEIGHT * span ? middle : to + (LINE_HEIGHT / 2) * span;
@@ -84,13 +88,11 @@ export function forbiddenGround(
       const to = Math.min(frame.right, band.highGhz + turn * fsrGhz + spare);
       if (!(to > from)) continue;
       const ground = (demand: number, above: boolean): void => {
-        const words = [
-          band.label,
-          `${above ? '\u2264' : '\u2265'} ${decibels(demand)}`,
-          twoOutputs ? outputWords(band.output) : undefined,
-        ]
-          .filter((part) => part !== undefined)
-          .join(' ');
+        const short = `${above ? '\u2264' : '\u2265'} ${decibels(demand)}${twoOutputs ? ` ${outputWords(band.output)}` : ''}`;
+        const whole = band.label === undefined ? short : `${band.label} ${short}`;
+        // Between crowded bands words beside a ground would run into the next one: without the label they often fit in it.
+        const words =
+          twoOutputs && !fits(whole, to - from, span) && fits(short, to - from, span) ? short : whole;
         images.push({
           ...{ from, to, words, above, demandDb: demand + reference, colour: colourOf(band.output) },
           low: above ? demand + reference : frame.bottomDb,
