@@ -11,10 +11,7 @@ import type { Role } from '../store/records.ts';
 import type { GraphqlContext } from './context.ts';
 
 /** Null: the field has no rule of its own; whoever may see its object may see it. */
-export function rolesOf(
-  schema: GraphQLSchema,
-  field: GraphQLField<unknown, unknown>,
-): readonly Role[] | null {
+function rolesOf(schema: GraphQLSchema, field: GraphQLField<unknown, unknown>): readonly Role[] | null {
   const directive = schema.getDirective('access');
   if (!directive || !field.astNode) return null;
   const values = getDirectiveValues(directive, field.astNode);

@@ -28,7 +28,7 @@ export class RequestRefused extends Error {
 
 type Place = Pick<GraphQLError, 'locations' | 'path'>;
 
-function bodyOf(problem: Problem, { locations, path }: Partial<Place> = {}): ErrorBody {
+export function bodyOf(problem: Problem, { locations, path }: Partial<Place> = {}): ErrorBody {
   return {
     message: problem.detail,
     ...(locations ? { locations } : {}),
@@ -68,11 +68,6 @@ export function problemErrorOf(error: unknown, log: LogDefect): ProblemError {
   const refusal = problemOfUnknown(cause);
   if (refusal.status >= 500) log(refusal.cause ?? cause, refusal.problem);
   return refusal;
-}
-
-/** What a field threw while the operation ran. */
-export function bodyOfFieldError(error: GraphQLError, log: LogDefect): ErrorBody {
-  return bodyOf(problemErrorOf(error, log).problem, error);
 }
 
 /** The errors of anything that kept a request from being run. */

@@ -8,18 +8,11 @@ import { badInput, ProblemError, refuse, unauthenticated } from '../errors.ts';
 import { asProblem, negotiate } from '../rest/index.ts';
 import type { Admit } from './admit.ts';
 import { createContext, type GraphqlContext, type Surroundings } from './context.ts';
-import {
-  bodiesOf,
-  bodyOfFieldError,
-  type ErrorBody,
-  type LogDefect,
-  problemErrorOf,
-  RequestRefused,
-} from './error-body.ts';
+import { bodiesOf, bodyOf, type LogDefect, problemErrorOf, RequestRefused } from './error-body.ts';
 import { readGraphqlRequest } from './parameters.ts';
 import { isIntrospection, type Prepare, type Prepared } from './prepare.ts';
 
-export const GRAPHQL_PATH = '/graphql';
+const GRAPHQL_PATH = '/graphql';
 
 export interface HttpDeps extends Surroundings {
   readonly admit: Admit;
@@ -30,6 +23,7 @@ export interface HttpDeps extends Surroundings {
 const JSON_OFFER = { suffix: 'json', mediaType: 'application/json' };
 const GRAPHQL_OFFER = { suffix: 'graphql', mediaType: 'application/graphql-response+json' };
 const OFFERS = [JSON_OFFER, GRAPHQL_OFFER];
+const OK = 200;
 
 const offerFor = (request: FastifyRequest) => negotiate(request.headers.accept, OFFERS);
 
@@ -67,11 +61,6 @@ function checkMethod({ operation }: Prepared, method: string): void {
   throw refuse('METHOD_NOT_ALLOWED', detail, { given: method, allowed: ['POST'] }, { allow: 'POST' });
 }
 
-/** Data that came back is 200, whatever went wrong beside it; without any the first problem tells the status. */
-function statusOf({ data }: ExecutionResult, errors: readonly ErrorBody[]): number {
-  return data || errors.length === 0 ? 200 : errors[0]!.extensions.status;
-}
-
 /** @param context null: only the schema is asked about, no resolver of ours is called */
 function run(
   app: FastifyInstance,
@@ -91,7 +80,7 @@ function run(
 
 /** The status of a request that was not run. */
 function refusalStatus(error: unknown, status: number, isPlainJson: boolean): number {
-  return error instanceof RequestRefused && error.isFaultOfDocument && isPlainJson ? 200 : status;
+  return error instanceof RequestRefused && error.isFaultOfDocument && isPlainJson ? OK : status;
 }
 
 /** The routes of one scope. `ws` is what an upgrade to a socket of the same path is answered by. */
@@ -132,9 +121,14 @@ export function registerHttp(scope: FastifyInstance, deps: HttpDeps, ws: RouteOp
     if (viewer === null && !isIntrospection(prepared)) throw unauthenticated('MISSING');
     const result = await run(scope, prepared, viewer && createContext(deps, viewer));
     const log = logOf(request);
-    const errors = (result.errors ?? []).map((error) => bodyOfFieldError(error, log));
     const { data = null } = result;
-    return send(reply, offer, statusOf(result, errors), errors.length > 0 ? { errors, data } : { data });
+    const refusals = (result.errors ?? []).map((error) => ({ error, refusal: problemErrorOf(error, log) }));
+    const [first] = refusals;
+    if (!first) return send(reply, offer, OK, { data });
+    const errors = refusals.map(({ error, refusal }) => bodyOf(refusal.problem, error));
+    // Data that came back is 200, whatever went wrong beside it; without any the first problem tells the status.
+    if (data) return send(reply, offer, OK, { errors, data });
+    return send(reply.headers(first.refusal.headers), offer, first.refusal.status, { errors, data });
   }
 
   const config = { access: 'SELF' } as const;

@@ -38,6 +38,11 @@ export function registerGraphql(app: FastifyInstance, deps: GraphqlDeps): void {
   const prepare = createPrepare(schema, limits);
   const sockets = createSockets({ ...deps, limits, log: app.log, prepare, schema });
 
+  // An upgrade that was answered instead of taken (401, 404) leaves a line that nobody reads, and so nobody ends.
+  app.addHook('onResponse', (request, _reply, done) => {
+    if (request.raw.headers.upgrade !== undefined) request.raw.socket.destroy();
+    done();
+  });
   app.register(websocket, {
     options: { maxPayload: limits.bodyBytes, handleProtocols },
     preClose(done) {

@@ -12,7 +12,7 @@ import { tooManyOpen } from '../errors.ts';
 import type { StoreEvent } from '../store/store.ts';
 import type { Admit } from './admit.ts';
 import { createContext, type Surroundings } from './context.ts';
-import { bodiesOf, bodyOfFieldError, type LogDefect, problemErrorOf } from './error-body.ts';
+import { bodiesOf, bodyOf, type LogDefect, problemErrorOf } from './error-body.ts';
 import { readMembers } from './parameters.ts';
 import type { Prepare } from './prepare.ts';
 
@@ -167,7 +167,7 @@ export function createSockets(deps: SocketDeps): Sockets {
 
   function withProblems({ data = null, errors }: Pick<ExecutionResult, 'data' | 'errors'>): ExecutionResult {
     if (!errors) return { data };
-    const bodies = errors.map((error) => bodyOfFieldError(error, logDefect));
+    const bodies = errors.map((error) => bodyOf(problemErrorOf(error, logDefect).problem, error));
     return { data, errors: bodies as unknown as readonly GraphQLError[] };
   }
 

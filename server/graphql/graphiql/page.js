@@ -7,25 +7,31 @@
   const { React, ReactDOM, GraphiQL, graphqlWs } = window;
 
   const EXAMPLES = [
-    `# The chips of the lab, and what their release "current" points at.
+    `# The chips of the lab,
+# and what their release "current" points at.
 query Chips {
   chips(first: 20) {
     edges {
       node {
         serial
         head { number model { referenceFrequencyThz fsrGhz } }
-        release { sequence version { number stale configuration { name } } createdAt }
+        release {
+          sequence createdAt
+          version { number stale configuration { name } }
+        }
       }
     }
   }
 }
 `,
-    `# Would this be taken? Nothing is stored. Give the serial of one of your chips below, under Variables.
+    `# Would this be taken? Nothing is stored.
+# Give the serial of one of your chips under Variables.
 query Check($chip: String!) {
   checkSpecification(input: {
     chip: $chip
     specification: { family: {
-      family: ELLIPTIC, shape: LOW_PASS, order: 4, rippleDb: 2, rejectionDb: 40
+      family: ELLIPTIC, shape: LOW_PASS, order: 4
+      rippleDb: 2, rejectionDb: 40
       band: { offsetFsr: { low: -0.1, high: 0.1 } }
     } }
   }) {
@@ -34,12 +40,14 @@ query Check($chip: String!) {
   }
 }
 `,
-    `# Asks for the design. Run it, then watch the request in the next tab.
+    `# Asks for the design.
+# Run it, then watch the request in the next tab.
 mutation Ask($chip: String!) {
   requestDesign(input: {
     chip: $chip
     specification: { family: {
-      family: ELLIPTIC, shape: LOW_PASS, order: 4, rippleDb: 2, rejectionDb: 40
+      family: ELLIPTIC, shape: LOW_PASS, order: 4
+      rippleDb: 2, rejectionDb: 40
       band: { offsetFsr: { low: -0.1, high: 0.1 } }
     } }
   }) {
@@ -55,18 +63,26 @@ subscription Watch($id: ID!) {
     design {
       id architecture order reason
       compliance { met worstMarginDb }
-      setting { totalPowerMw cautions { code text } channels { channel drives currentMa limitMa } }
+      setting {
+        totalPowerMw
+        cautions { code text }
+        channels { channel drives currentMa limitMa }
+      }
     }
   }
 }
 `,
-    `# Designs with their figures, and one curve thinned out to about 200 points.
+    `# Designs with their figures,
+# and a curve thinned out to about 200 points.
 query Designs {
   designs(first: 5) {
     edges {
       node {
         id order architecture
-        figures { insertionLossDb rippleDb rejectionDb bandwidth3DbGhz notDefined { figure reason } }
+        figures {
+          insertionLossDb rippleDb rejectionDb bandwidth3DbGhz
+          notDefined { figure reason }
+        }
         response(reduceTo: 200) { offsetGhz transmissionDb groupDelayPs }
       }
     }
@@ -119,6 +135,7 @@ query Designs {
         storage: window.sessionStorage,
         shouldPersistHeaders: false,
         isHeadersEditorEnabled: false,
+        defaultEditorToolsVisibility: 'variables',
         defaultTabs: EXAMPLES.map((query, i) => ({ query, variables: VARIABLES[i] })),
       }),
     );

@@ -149,6 +149,23 @@ function countListeners(notifications: Notifications): () => number {
   return () => open;
 }
 
+it('while the database is away operations fail with 503 and when to come back, then go on', async () => {
+  const post = () =>
+    fetch(`${second.url}/graphql`, {
+      method: 'POST',
+      headers: { 'content-type': 'application/json', authorization: `Bearer ${token()}` },
+      body: JSON.stringify({ query: '{ chips { edges { node { serial } } } }' }),
+    });
+  expect((await post()).status).toBe(200);
+  databaseLine.cut();
+  const away = await post();
+  expect([away.status, away.headers.get('retry-after')]).toEqual([503, '2']);
+  const { errors } = (await away.json()) as { errors: { extensions: { code: string } }[] };
+  expect(errors.map(({ extensions }) => extensions.code)).toEqual(['SERVICE_UNAVAILABLE']);
+  databaseLine.mend();
+  await expect.poll(async () => (await post()).status, { timeout: 10_000 }).toBe(200);
+});
+
 describe('a socket', () => {
   const FORBIDDEN = 4403;
 
@@ -257,6 +274,33 @@ describe('a socket', () => {
     expect(await codeAfter(['graphql-transport-ws'], 'nonsense')).toBe(4400);
     const early = JSON.stringify({ id: '1', type: 'subscribe', payload: { query: '{ me { role } }' } });
     expect(await codeAfter(['graphql-transport-ws'], early)).toBe(4401);
+  });
+
+  it('is told that the service stops, which does not wait for it', async () => {
+    const third = await startSecond(databaseLine.url);
+    const line = openLine(third.url, { token: token() });
+    const events = line.follow(RELEASES, { chip: SERIAL });
+    await events.next();
+    const end = events.next().catch((error: unknown) => error);
+    const begun = performance.now();
+    await third.stop();
+    expect(performance.now() - begun).toBeLessThan(STOP_MS);
+    expect((await line.closed).code).toBe(1001);
+    await end;
+  });
+  /** Far below what a process gets to stop (15 s), far above what it takes. */
+  const STOP_MS = 10_000;
+
+  it('is not kept open at a path that is none for sockets', async () => {
+    const open = () =>
+      new Promise<number>((resolve) => lab.service.app.server.getConnections((_, count) => resolve(count)));
+    const before = await open();
+    for (const path of ['/healthz', '/graphiql', '/nowhere', '/v1/me']) {
+      const socket = new WebSocket(`${lab.service.url.replace('http', 'ws')}${path}`);
+      socket.on('error', () => {});
+      await new Promise((resolve) => socket.on('close', resolve));
+    }
+    await expect.poll(open).toBeLessThanOrEqual(before);
   });
 
   it('leaves no listener behind when its client vanishes', async () => {
