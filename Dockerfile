@@ -22,6 +22,7 @@ RUN npm ci --omit=dev --omit=optional --ignore-scripts && npm cache clean --forc
 COPY --from=build /app/dist dist
 COPY prisma/migrations prisma/migrations
 COPY schema/*.graphql schema/
+COPY server/graphql/graphiql server/graphql/graphiql
 COPY LICENSE ./
 USER node
 EXPOSE 8137
