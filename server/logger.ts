@@ -24,9 +24,10 @@ const TOKEN = /(rbt_[a-z0-9]{12}_)[A-Za-z0-9_-]{8,}/g;
 /** User and password of any URL, up to the last @ before a quote, blank or path. */
 const URL_PASSWORD = /([a-z][a-z0-9+.-]*:\/\/[^\s"'/:@]*):[^\s"'/]+@/gi;
 
-/** `text` with tokens and URL passwords made unreadable. */
+/** `text` with tokens and URL passwords made unreadable. Every line comes through here, and few hold what could be one. */
 export function withoutSecrets(text: string): string {
-  return text.replace(TOKEN, '$1[redacted]').replace(URL_PASSWORD, '$1:[redacted]@');
+  const tokenless = text.includes('rbt_') ? text.replace(TOKEN, '$1[redacted]') : text;
+  return tokenless.includes('://') ? tokenless.replace(URL_PASSWORD, '$1:[redacted]@') : tokenless;
 }
 
 /** @param destination standard output unless a test reads along. */
