@@ -111,6 +111,13 @@ describe('the embedded PostgreSQL', () => {
     await expect.poll(state, { timeout: 10_000 }).toBe(1);
   });
 
+  it('stopping it keeps the process alive until it has ended, also when nothing else does', async () => {
+    const { child } = await own('WRAPPER');
+    child.send('stop');
+    const [code] = await once(child, 'exit');
+    expect(code).toBe(7);
+  });
+
   it('a second start on the folder adopts the first, and does not stop it', async () => {
     const first = await start();
     const second = await start();
