@@ -15,7 +15,7 @@ function tellTerminal({ url, dataFolder, firstAdminToken }: RunningProcess): voi
   const lines: string[] = [];
   if (url !== null) {
     lines.push(`REST     ${url}/v1       described at ${url}/docs`);
-    lines.push(`GraphQL  ${url}/graphql`);
+    lines.push(`GraphQL  ${url}/graphql  to try at ${url}/graphiql`);
   }
   if (dataFolder !== null) lines.push(`Data     ${dataFolder}`);
   if (firstAdminToken !== null)

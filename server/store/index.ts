@@ -3,7 +3,6 @@
 export { BackupUnreadable, backup, restore } from './backup/index.ts';
 export type { StoreOptions } from './create-store.ts';
 export { createStore } from './create-store.ts';
-export { migrate } from './migrate.ts';
 export { InvalidSortKey } from './page.ts';
 export type * from './records.ts';
 export type * from './store.ts';

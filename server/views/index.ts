@@ -11,7 +11,6 @@ export {
 } from './design.ts';
 export { configurationView, releaseView, versionView } from './library.ts';
 export { actorView, historyView, tokenView, viewerView } from './people.ts';
-export { opticalFrequency } from './quantities.ts';
 export {
   designSheet,
   releaseSheet,
@@ -20,4 +19,4 @@ export {
   settingSheetJson,
   versionSheet,
 } from './setting-sheet.ts';
-export { bandView, type FilterSpecificationView, specificationView } from './specification.ts';
+export { type FilterSpecificationView, specificationView } from './specification.ts';
