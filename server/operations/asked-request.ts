@@ -1,5 +1,6 @@
 /** Stored requests, and answers from the store, as the one thing that both doors show. */
 import { askedOfSpecification } from '../../schema/canonical.ts';
+import type { RequestDesignInput } from '../../schema/design-request.ts';
 import type { DesignQuestion } from '../../src/design/index.ts';
 import type { ChipRecord, ChipRevisionRecord, DesignRecord, RequestRecord } from '../store/records.ts';
 import type { Context } from './context.ts';
@@ -7,13 +8,27 @@ import { cachedRequestId, wireId } from './ids.ts';
 import type { DesignRequest } from './operations.ts';
 import { problemFor } from './question.ts';
 
-/** A hit that wrote nothing. What was asked is told in offsets: whoever asked first may have used other units. */
+type AskedInOffsets = Pick<RequestDesignInput, 'specification' | 'synthesis'>;
+
+/** As long as the record is remembered, so is what it says: a repeat reads no text. */
+const questions = new WeakMap<DesignRecord, AskedInOffsets>();
+
+/** In offsets: whoever asked first may have used other units. */
+function questionOf(design: DesignRecord): AskedInOffsets {
+  const known = questions.get(design);
+  if (known !== undefined) return known;
+  const { specification, synthesis } = JSON.parse(design.canonical) as DesignQuestion;
+  const question = { specification: askedOfSpecification(specification), synthesis };
+  questions.set(design, question);
+  return question;
+}
+
+/** A hit that wrote nothing. */
 export function cachedRequest(
   design: DesignRecord,
   chip: ChipRecord,
   revision: ChipRevisionRecord,
 ): DesignRequest {
-  const question = JSON.parse(design.canonical) as DesignQuestion;
   return {
     id: cachedRequestId(design.id),
     cached: true,
@@ -24,8 +39,7 @@ export function cachedRequest(
     asked: {
       chip: chip.serial,
       chipRevision: revision.number,
-      specification: askedOfSpecification(question.specification),
-      synthesis: question.synthesis,
+      ...questionOf(design),
     },
     computationId: null,
     designId: design.id,

@@ -53,12 +53,12 @@ export async function findDesign(request: FastifyRequest, { operations }: RestDe
 /** Texts kept: about 30 kB each. The same design is asked for again and again while a script polls or a lab compares. */
 const KEPT_TEXTS = 200;
 
-/** A design never changes, and who may not see it never comes here: its text is made once. */
-async function designText(deps: RestDeps, request: FastifyRequest, design: DesignRecord): Promise<string> {
+/** A design never changes, and who may not see it never comes here: its text is made, and encoded, once. */
+async function designText(deps: RestDeps, request: FastifyRequest, design: DesignRecord): Promise<Buffer> {
   const { designTexts: texts } = deps;
   const known = texts.get(design.id);
   if (known !== undefined) return known;
-  const text = await recordText(deps, request, designsWire, design);
+  const text = Buffer.from(await recordText(deps, request, designsWire, design), 'utf8');
   if (texts.size >= KEPT_TEXTS) texts.delete(texts.keys().next().value ?? '');
   texts.set(design.id, text);
   return text;

@@ -11,7 +11,7 @@ export interface TaggedAnswer {
   readonly etag: string;
   readonly mediaType: string;
   /** Called for 200 only. */
-  readonly render: () => string | Promise<string>;
+  readonly render: () => string | Promise<string | Buffer>;
   readonly fileName?: string;
 }
 

@@ -10,8 +10,8 @@ export interface RestDeps {
   readonly operations: Operations;
   readonly authenticator: Authenticator;
   readonly waiting: Waiting;
-  /** Designs as text, by their hash. */
-  readonly designTexts: Map<string, string>;
+  /** Designs as the bytes of their text, by their hash. */
+  readonly designTexts: Map<string, Buffer>;
 }
 
 export function wiringOf({ operations }: RestDeps, request: FastifyRequest): Wiring {
