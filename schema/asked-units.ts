@@ -172,7 +172,11 @@ export function problemInAskedUnits(
     return { reason, changes: translated, input: withEdits(asked, translated) };
   });
   const kept = offers.filter((offer) => accepts(offer.input));
-  if (pointer === undefined) return { ...rest, ...(allowed === undefined ? {} : { allowed }), nearest: kept };
+  if (pointer === undefined) {
+    // About the chip, not about the question: nothing to translate.
+    const about = canonicalGiven === undefined ? {} : { given: canonicalGiven };
+    return { ...rest, ...about, ...(allowed === undefined ? {} : { allowed }), nearest: kept };
+  }
   const target = translate(pointer, body, frame);
   const given = collisionIn(canonicalGiven, body, frame) ?? valueAt(body, target.path);
   return {

@@ -32,6 +32,8 @@ function holds(
   const { ringDelay } = chip.cells[run.first]!;
   const cells = chip.cells.slice(run.first, run.last + 1);
   if (cells.some((cell) => cell.ringDelay !== ringDelay)) return false;
+  // A filter's poles are made by rings of one unit delay; longer ones serve as plain delay only.
+  if (rings[0] + rings[1] > 0 && ringDelay !== 1) return false;
   return ([0, 1] as const).some((swap) => {
     const here: readonly [number, number] = [delay[swap], delay[(1 - swap) as 0 | 1]];
     const full = compensatingRings(here, delayOf(chip, run), ringDelay);

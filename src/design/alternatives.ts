@@ -2,6 +2,7 @@
 import type { ChipModel } from '../chip/index.ts';
 import type { Refusal } from '../errors.ts';
 import type { Architecture, Family } from '../filter/index.ts';
+import type { Compliance } from '../response/index.ts';
 import { orderOn } from './capacity.ts';
 import type { Alternative } from './design.ts';
 import { exactCascadeLossDb } from './exact-cascade.ts';
@@ -41,7 +42,13 @@ const NAMES: Record<Architecture, string> = {
   SECTION_CASCADE: 'a cascade of sections',
 };
 
-export function reasonFor(chosen: OpenGroup, groups: readonly Group[], told: boolean): string {
+/** @param set compliance of the chosen one's setting, crosstalk and driver steps included */
+export function reasonFor(
+  chosen: OpenGroup,
+  groups: readonly Group[],
+  told: boolean,
+  set: Compliance,
+): string {
   const { family, order, architecture, best } = chosen;
   const others = groups.filter((group) => group !== chosen && isOpen(group)).length;
   const met = best.onChip.met
@@ -49,8 +56,12 @@ export function reasonFor(chosen: OpenGroup, groups: readonly Group[], told: boo
     : `comes nearest to the mask on this chip with its losses (worst margin ${best.onChip.worstMarginDb.toFixed(2)} dB)`;
   const asked = told ? ' (as asked)' : '';
   const compared = others > 0 ? `, best of ${others + 1} compared: fewest rings first, then margin` : '';
+  const steps =
+    set.met === best.onChip.met
+      ? ''
+      : ` The setting, in whole driver steps, ${set.met ? 'meets' : 'misses'} it (worst margin ${set.worstMarginDb.toPrecision(2)} dB).`;
   const remarks = best.remarks.length > 0 ? ` ${best.remarks.join(' ')}` : '';
-  return `${family} of order ${order} as ${NAMES[architecture]}${asked} ${met}${compared}.${remarks}`;
+  return `${family} of order ${order} as ${NAMES[architecture]}${asked} ${met}${compared}.${steps}${remarks}`;
 }
 
 export function alternativeOf(group: Group, chosen: boolean, chip: ChipModel): Alternative {
@@ -59,13 +70,17 @@ export function alternativeOf(group: Group, chosen: boolean, chip: ChipModel): A
     family,
     architecture,
     order,
-    rings: order,
+    rings: best === null ? order : ringsUsed(best),
     fits: best !== null,
     worstMarginDb: best === null ? null : best.onChip.worstMarginDb,
     insertionLossDb: best === null ? null : insertionLossOf(best, chip),
     reason: chosen ? 'chosen' : (refusal?.message ?? describe(best!)),
   };
 }
+
+/** Fewer than the order where an arm's plain delay is the pole at 0. */
+const ringsUsed = ({ placed }: Realisation): number =>
+  placed.cells.reduce((sum, cell) => sum + cell.rings.filter((ring) => !ring.parked).length, 0);
 
 function describe(best: Realisation): string {
   const { met, worstMarginDb } = best.onChip;

@@ -26,6 +26,7 @@ import { tradeOffOf } from './trade-off.ts';
 /** Most selective first: it needs the fewest cells. */
 const PREFERENCE: readonly Family[] = ['ELLIPTIC', 'CHEBYSHEV_II', 'CHEBYSHEV_I', 'BUTTERWORTH'];
 
+/** None where no filter there is has as many sections as the chip's cells hold. */
 export function cascadeGroup(
   families: readonly FamilyPlans[],
   chip: ChipModel,
@@ -56,12 +57,7 @@ function plansTried(families: readonly FamilyPlans[], mostOrder: number): Filter
     const orders = [...new Set(plans.map((plan) => plan.order))].sort((a, b) => a - b);
     if (orders.length > 0) return orders.map((order) => plans.find((plan) => plan.order === order)!);
   }
-  throw new Refusal({
-    code: 'SPECIFICATION_UNREACHABLE',
-    limit: 'RINGS',
-    detail: `As a cascade of sections this chip holds order ${mostOrder} at the most.`,
-    allowed: { maxOrder: mostOrder },
-  });
+  return [];
 }
 
 /** Exact sections and the jointly optimised ones, both placed and judged; the better one is returned. */

@@ -5,13 +5,13 @@
  */
 import { type ChipModel, circuitOfSetting, type Setting, solveSetting } from '../chip/index.ts';
 import { Refusal } from '../errors.ts';
-import { planFilters } from '../filter/index.ts';
 import { complianceOf } from '../response/index.ts';
 import { alternativeOf, cascadeBeside, type Group, type OpenGroup, rank, reasonFor } from './alternatives.ts';
-import { capacityOf, refuseBelowFloor } from './capacity.ts';
 import { cascadeGroup } from './cascade-group.ts';
+import { plansFor } from './check-question.ts';
 import type { Design, DesignQuestion } from './design.ts';
 import { figureBands, figuresFrom, sourcesOf } from './judge.ts';
+import { withNearest } from './nearest.ts';
 import { pairGroups } from './pair-groups.ts';
 import type { Realisation } from './realisation.ts';
 import { cellRecord } from './records.ts';
@@ -30,10 +30,17 @@ const SET = 0.9;
  * Cost: milliseconds for the family form as an all-pass pair, up to seconds for masks and cascades.
  */
 export function computeDesign(question: DesignQuestion, chip: ChipModel, hooks: DesignHooks = {}): Design {
-  const { specification, synthesis } = question;
+  try {
+    return designFor(question, chip, hooks);
+  } catch (error) {
+    throw error instanceof Refusal ? withNearest(error, question, chip) : error;
+  }
+}
+
+function designFor(question: DesignQuestion, chip: ChipModel, hooks: DesignHooks): Design {
+  const { synthesis } = question;
   const tell = hooks.onProgress ?? (() => {});
-  refuseBelowFloor(specification, chip);
-  const families = planFilters(specification, chip.fsrGhz, capacityOf(chip, synthesis.architecture));
+  const families = plansFor(question, chip);
   const groups: Group[] = [];
   if (synthesis.architecture !== 'SECTION_CASCADE')
     groups.push(...pairGroups(families, chip, (part) => tell(0.4 * part)));
@@ -79,12 +86,13 @@ function designOf(
   const realisation: Realisation = chosen.best;
   const { plan, placed, architecture } = realisation;
   const sources = sourcesOf(circuitOfSetting(setting, chip), chip.fsrGhz);
+  const compliance = complianceOf(sources, plan.mask);
   const centreGhz = (plan.centreRad * chip.fsrGhz) / (2 * Math.PI);
   return {
     order: plan.order,
     family: plan.family,
     architecture,
-    reason: reasonFor(chosen, groups, told),
+    reason: reasonFor(chosen, groups, told, compliance),
     alternatives: [
       ...groups.map((group) => alternativeOf(group, group === chosen, chip)),
       ...cascadeBeside(chosen, groups, chip),
@@ -97,7 +105,7 @@ function designOf(
     tradeOff: realisation.tradeOff?.(tellTradeOff) ?? [],
     centreGhz,
     mask: plan.mask,
-    compliance: complianceOf(sources, plan.mask),
+    compliance,
     figures: figuresFrom(
       sources,
       plan.output,

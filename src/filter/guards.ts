@@ -7,7 +7,7 @@ import type { PrototypeAsk } from './families.ts';
 export const MAX_ORDER = 32;
 
 /** Below this a ripple's factor, above this a rejection's factor, leaves the range in which the formulas were checked. */
-const MIN_RIPPLE_DB = 1e-9;
+export const MIN_RIPPLE_DB = 1e-9;
 const MAX_REJECTION_DB = 300;
 
 function refuse(detail: string, given: unknown, allowed: unknown, limit?: LimitKind): never {
@@ -40,12 +40,12 @@ export function guardReach(order: number, demand: unknown): void {
 export function guardEdge(edgeRad: number): void {
   if (edgeRad > 0 && edgeRad < Math.PI) return;
   const detail = 'A band edge must lie between the centre and half a free spectral range from it.';
-  refuse(detail, edgeRad, { above: 0, below: Math.PI }, 'FREE_SPECTRAL_RANGE');
+  refuse(detail, edgeRad, 'an edge between the two', 'FREE_SPECTRAL_RANGE');
 }
 
 export function guardRipple(rippleDb: number | undefined): asserts rippleDb is number {
   if (rippleDb !== undefined && rippleDb >= MIN_RIPPLE_DB && rippleDb < MAX_REJECTION_DB) return;
-  refuse('The ripple must be a number of dB above 0.', rippleDb ?? null, {
+  refuse(`The ripple must lie between ${MIN_RIPPLE_DB} and ${MAX_REJECTION_DB} dB.`, rippleDb ?? null, {
     min: MIN_RIPPLE_DB,
     below: MAX_REJECTION_DB,
   });
@@ -77,7 +77,7 @@ export function guardPoles(poles: readonly Complex[]): void {
     detail:
       'The transition is so steep, or the band so narrow, that a ring would have to keep its light almost for ever.',
     given: { polePowerLoss: (1 - nearest) * (1 + nearest) },
-    allowed: { min: 2 * LEAST_POLE_DISTANCE },
+    allowed: 'a wider band, or a wider transition',
     limit: 'COUPLING_RANGE',
   });
 }

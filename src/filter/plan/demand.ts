@@ -10,6 +10,9 @@ import type { OneBandDemand, StopDemand } from './plan.ts';
 
 const TURN = 2 * Math.PI;
 
+/** Allowances smaller than this are lost in the rounding of the figures that are judged, dB. */
+const LEAST_ALLOWANCE_DB = 1e-6;
+
 /** A band as the filter's own output must show it: lossless outputs sum to 1, so each states the other's. */
 export interface OwnBand {
   /** Position in the mask. */
@@ -76,7 +79,7 @@ function ownBands(band: Band, index: number, output: OutputPort, fsrGhz: number)
 }
 
 function requireBelowZero(minTransmissionDb: number, index: number): void {
-  if (minTransmissionDb < 0) return;
+  if (minTransmissionDb <= -LEAST_ALLOWANCE_DB) return;
   throw new Refusal({
     code: 'SPECIFICATION_UNREACHABLE',
     limit: 'PASSIVITY',
@@ -84,7 +87,7 @@ function requireBelowZero(minTransmissionDb: number, index: number): void {
       'A passive chip passes 0 dB at single frequencies at the most; over a band it needs an allowance.',
     pointer: `/specification/mask/bands/${index}/minTransmissionDb`,
     given: minTransmissionDb,
-    allowed: { max: -1e-6, unit: 'dB' },
+    allowed: { max: -LEAST_ALLOWANCE_DB, unit: 'dB' },
     nearest: [
       {
         reason: 'an allowance of 0.1 dB',

@@ -1,5 +1,6 @@
 /** The family form of a specification: which parameters a family and shape take, and the low-pass they describe. */
 import { Refusal } from '../../errors.ts';
+import { MIN_RIPPLE_DB } from '../guards.ts';
 import type { Family, FamilySpecification } from '../specification.ts';
 import { arcOf, distanceRad, insideHalfTurn } from './circle.ts';
 
@@ -81,6 +82,15 @@ export function requireParameters(spec: FamilySpecification): void {
       { reason: 'a ripple of 0.5 dB', value: 0.5, unit: 'dB' },
     );
   }
+  if (spec.rippleDb !== undefined && spec.rippleDb < MIN_RIPPLE_DB) {
+    invalid(
+      'rippleDb',
+      `A ripple below ${MIN_RIPPLE_DB} dB is lost in rounding.`,
+      spec.rippleDb,
+      { min: MIN_RIPPLE_DB, unit: 'dB' },
+      { reason: 'the least ripple', value: MIN_RIPPLE_DB, unit: 'dB' },
+    );
+  }
   if (NEEDS_REJECTION.includes(family) && spec.rejectionDb === undefined) {
     invalid(
       'rejectionDb',
@@ -91,10 +101,13 @@ export function requireParameters(spec: FamilySpecification): void {
     );
   }
   if (family === 'ELLIPTIC' && spec.rejectionDb! <= spec.rippleDb!) {
-    invalid('rejectionDb', 'The rejection must be greater than the ripple.', spec.rejectionDb, {
-      above: spec.rippleDb,
-      unit: 'dB',
-    });
+    invalid(
+      'rejectionDb',
+      'The rejection must be greater than the ripple.',
+      spec.rejectionDb,
+      { above: spec.rippleDb, unit: 'dB' },
+      { reason: 'a rejection of 30 dB', value: 30, unit: 'dB' },
+    );
   }
   if (spec.order === undefined) requireOrderData(spec);
   refuseUnused(spec);
@@ -180,12 +193,12 @@ export function geometryOf(spec: FamilySpecification, fsrGhz: number): FamilyGeo
       allowed: { aboveWidth: 0, belowWidth: fsrGhz, unit: 'GHz' },
       nearest: [
         {
-          reason: 'half the free spectral range, around the same middle',
+          reason: 'half the free spectral range, around the centre',
           changes: [
             {
               pointer: `${AT}/band`,
               given: band,
-              works: centred((band.lowGhz + band.highGhz) / 2, fsrGhz / 4),
+              works: centred(spec.centreGhz, fsrGhz / 4),
               unit: 'GHz',
             },
           ],

@@ -112,7 +112,13 @@ function requireWithin(
     rippleDb: allowanceOf(spec),
   });
   if (reach < spec.rejectionDb - 1e-6)
-    refuseOrder(spec, geometry, orderOf(spec, geometry), { order, limit: 'ORDER' }, fsrGhz);
+    refuseOrder(
+      spec,
+      geometry,
+      orderOf(spec, geometry),
+      { order, halfBandOrder: order, limit: 'ORDER' },
+      fsrGhz,
+    );
 }
 
 function maskBands(

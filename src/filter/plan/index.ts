@@ -1,6 +1,6 @@
 /** From a specification to the filters that answer it, or the reason why none does. */
 import { Refusal } from '../../errors.ts';
-import type { FilterSpecification } from '../specification.ts';
+import type { FamilySpecification, FilterSpecification } from '../specification.ts';
 import { planFamily } from './family-plan.ts';
 import { planInterleaver } from './interleaver-plan.ts';
 import { planMask } from './mask-plan.ts';
@@ -18,10 +18,25 @@ export function planFilters(
   capacity: Capacity,
 ): FamilyPlans[] {
   if (specification.mask) {
-    refuseOrderOutOfRange(specification.mask.order, capacity, '/specification/mask/order');
-    return planMask(specification.mask, fsrGhz, capacity);
+    const { mask } = specification;
+    refuseOrderOutOfRange(mask.order, capacity, '/specification/mask/order');
+    return about('/specification/mask', () => planMask(mask, fsrGhz, capacity));
   }
-  const spec = specification.family;
+  return about('/specification/family', () => planFamilyForm(specification.family, fsrGhz, capacity));
+}
+
+/** The filter core knows no members of a request: what it refuses by itself is about the specification as a whole. */
+function about(pointer: string, plan: () => FamilyPlans[]): FamilyPlans[] {
+  try {
+    return plan();
+  } catch (error) {
+    if (!(error instanceof Refusal) || error.details.pointer !== undefined) throw error;
+    const { given: _, ...details } = error.details;
+    throw new Refusal({ ...details, pointer });
+  }
+}
+
+function planFamilyForm(spec: FamilySpecification, fsrGhz: number, capacity: Capacity): FamilyPlans[] {
   refuseOrderOutOfRange(spec.order, capacity, '/specification/family/order');
   const plan =
     spec.shape === 'INTERLEAVER'

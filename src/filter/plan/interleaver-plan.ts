@@ -170,11 +170,11 @@ function requireOrder(
       value: order - 1,
     });
   }
-  if (order > capacity.order) refuse(spec, family, order, stopEdgeRad, capacity);
+  if (order > capacity.halfBandOrder) refuse(spec, family, order, stopEdgeRad, capacity);
   if (stopEdgeRad === null || spec.rejectionDb === undefined) return;
   if (halfBandIsolationDb(family, order, stopEdgeRad) < spec.rejectionDb - ROUNDING_DB) {
     const needed = leastOrder(spec, family, stopEdgeRad, capacity);
-    refuse(spec, family, needed, stopEdgeRad, { order, limit: 'ORDER' });
+    refuse(spec, family, needed, stopEdgeRad, { order, halfBandOrder: order, limit: 'ORDER' });
   }
 }
 
@@ -185,7 +185,7 @@ function refuse(
   stopEdgeRad: number | null,
   capacity: Capacity,
 ): never {
-  const most = capacity.order - (1 - (capacity.order % 2));
+  const most = capacity.halfBandOrder;
   const changes = [];
   if (spec.order !== undefined && most >= 1 && spec.order > most)
     changes.push({ pointer: `${AT}/order`, given: spec.order, works: most });
@@ -197,7 +197,7 @@ function refuse(
   throw new Refusal({
     code: 'SPECIFICATION_UNREACHABLE',
     limit: capacity.limit,
-    detail: `This ${family} interleaver needs ${describeOrder(needed)}; ${describeCapacity(capacity)}, and half-band filters are odd.`,
+    detail: `This ${family} interleaver needs ${describeOrder(needed)}; ${describeCapacity({ ...capacity, order: most })} (half-band filters are odd).`,
     pointer: spec.order === undefined ? `${AT}/rejectionDb` : `${AT}/order`,
     given: spec.order ?? spec.rejectionDb ?? null,
     allowed: { maxOrder: most },

@@ -26,7 +26,7 @@ function plansOf(
   const candidates = orders
     .filter((order) => order <= capacity.order)
     .flatMap((order) => candidatesOf(demand, family, order));
-  const halfBand = halfBandCandidateOf(demand, family, mask.order ?? null, capacity.order);
+  const halfBand = halfBandCandidateOf(demand, family, mask.order ?? null, capacity.halfBandOrder);
   if (halfBand) candidates.push(halfBand);
   return { family, leastOrder, plans: candidates.map((candidate) => planOf(candidate, mask, understood)) };
 }

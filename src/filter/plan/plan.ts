@@ -44,7 +44,10 @@ export interface FilterPlan {
 
 /** The greatest order worth designing for a chip, and what sets it: the core's own bound or the chip's rings. */
 export interface Capacity {
+  /** Of any filter; 0 where none fits. */
   readonly order: number;
+  /** Of an odd half-band filter, whose pole at 0 may be a plain delay; at least what `order` allows. */
+  readonly halfBandOrder: number;
   readonly limit: 'ORDER' | 'RINGS';
 }
 

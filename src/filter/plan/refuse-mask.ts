@@ -28,7 +28,7 @@ export function refuseMaskOrder(
   throw new Refusal({
     code: 'SPECIFICATION_UNREACHABLE',
     limit,
-    detail: `The mask needs ${describeOrder(needed)} (${mask.family ?? 'the best of the four families'}); ${describeCapacity({ order: most, limit })}.`,
+    detail: `The mask needs ${describeOrder(needed)} (${mask.family ?? 'the best of the four families'}); ${describeCapacity({ ...capacity, order: most, limit })}.`,
     pointer:
       mask.order === undefined ? `/specification/mask/bands/${strictest.index}` : '/specification/mask/order',
     given: mask.order ?? mask.bands[strictest.index]!.maxTransmissionDb ?? null,

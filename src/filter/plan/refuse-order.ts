@@ -19,6 +19,8 @@ export function describeOrder(order: number): string {
 }
 
 export function describeCapacity(capacity: Capacity): string {
+  if (capacity.order < 1)
+    return 'this chip holds none: its arms and rings fit no filter of one unit delay a pole';
   return capacity.limit === 'RINGS'
     ? `the chip's rings make order ${capacity.order} at the most`
     : `order ${capacity.order} is what there is`;
@@ -45,7 +47,10 @@ export function refuseOrder(
     detail: `This ${spec.family} filter needs ${describeOrder(order)}; ${describeCapacity(capacity)}.`,
     pointer: spec.order === undefined ? `${AT}/rejectionDb` : `${AT}/order`,
     given,
-    allowed: spec.order === undefined ? { maxOrder: capacity.order } : { min: 1, max: capacity.order },
+    allowed:
+      spec.order === undefined || capacity.order < 1
+        ? { maxOrder: capacity.order }
+        : { min: 1, max: capacity.order },
     nearest:
       asked && geometry.stopEdgeRad !== null
         ? easier(spec, geometry, order, capacity, fsrGhz)

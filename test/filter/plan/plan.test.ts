@@ -17,7 +17,7 @@ const DEEP_DB = -150;
 /** What rounding of edges and levels may cost a demand that is met exactly. */
 const ROUNDING_DB = 1e-5;
 
-const WIDE: Capacity = { order: 16, limit: 'ORDER' };
+const WIDE: Capacity = { order: 16, halfBandOrder: 15, limit: 'ORDER' };
 
 interface OpticalDesign {
   readonly id: string;
@@ -263,7 +263,7 @@ describe('refusals', () => {
                   ...(family === 'BUTTERWORTH' ? {} : { rippleDb: 0.5 }),
                 },
               };
-        const capacity: Capacity = { order: rings, limit: 'RINGS' };
+        const capacity: Capacity = { order: rings, halfBandOrder: rings - (1 - (rings % 2)), limit: 'RINGS' };
         try {
           planFilters(specification, 100, capacity);
         } catch (error) {
