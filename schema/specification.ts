@@ -16,7 +16,46 @@ const DEEPEST_DB = 200;
 const GREATEST_RIPPLE_DB = 40;
 
 export const outputRule = z.enum(OUTPUTS);
-const orderRule = z.int().min(1).max(LIMITS.order);
+
+const orderRule = z
+  .int()
+  .check(({ value, issues }) => {
+    if (value >= 1 && value <= LIMITS.order) return;
+    const works = Math.min(LIMITS.order, Math.max(1, value));
+    issues.push({
+      code: 'custom',
+      input: value,
+      message: `must be a whole number from 1 to ${LIMITS.order}`,
+      params: {
+        code: 'SPECIFICATION_INVALID',
+        limit: 'ORDER',
+        allowed: { min: 1, max: LIMITS.order },
+        fix: { reason: `order ${works}`, works },
+      },
+    });
+  })
+  .meta({ minimum: 1, maximum: LIMITS.order });
+
+/** A ripple or rejection: dB above 0. One written as a transmission, −1 for 1, is offered with its sign turned. */
+const positiveDbRule = (mostDb: number) =>
+  z
+    .number()
+    .check(({ value, issues }) => {
+      if (value > 0 && value <= mostDb) return;
+      const works = value === 0 ? undefined : Math.min(mostDb, Math.abs(value));
+      const reason = value < 0 ? 'the positive value' : `at most ${mostDb} dB`;
+      issues.push({
+        code: 'custom',
+        input: value,
+        message: value > 0 ? `must be at most ${mostDb} dB` : 'must be more than 0 dB',
+        params: {
+          code: 'SPECIFICATION_INVALID',
+          allowed: { above: 0, max: mostDb, unit: 'dB' },
+          ...(works === undefined ? {} : { fix: { reason, works, unit: 'dB' } }),
+        },
+      });
+    })
+    .meta({ exclusiveMinimum: 0, maximum: mostDb });
 
 /** Which members a family and a shape take is decided by the core, which knows what they mean. */
 export const familySpecificationRule = z.strictObject({
@@ -26,8 +65,8 @@ export const familySpecificationRule = z.strictObject({
   centre: frequencyRule.optional(),
   band: intervalRule.optional(),
   stopband: intervalRule.optional(),
-  rippleDb: z.number().positive().max(GREATEST_RIPPLE_DB).optional(),
-  rejectionDb: z.number().positive().max(DEEPEST_DB).optional(),
+  rippleDb: positiveDbRule(GREATEST_RIPPLE_DB).optional(),
+  rejectionDb: positiveDbRule(DEEPEST_DB).optional(),
   gridGhz: z.number().positive().max(100_000).optional(),
   output: outputRule.optional(),
 });

@@ -52,7 +52,7 @@ const SIZES: Readonly<Record<string, string>> = { string: ' characters', array: 
 function kindOf(value: unknown): string {
   if (value === null) return 'null';
   if (Array.isArray(value)) return 'a list';
-  if (typeof value === 'number' && !Number.isFinite(value)) return String(value);
+  if (typeof value === 'number') return String(value);
   return typeof value === 'object' ? 'an object' : `a ${typeof value}`;
 }
 

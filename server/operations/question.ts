@@ -4,12 +4,12 @@ import { withoutNulls } from '../../schema/absent.ts';
 import { problemInAskedUnits } from '../../schema/asked-units.ts';
 import { canonicalSpecification, designText } from '../../schema/canonical.ts';
 import { type RequestDesignInput, requestDesignRule } from '../../schema/design-request.ts';
-import type { Problem } from '../../schema/problem.ts';
+import type { Nearest, Problem } from '../../schema/problem.ts';
 import type { ChipModel } from '../../src/chip/index.ts';
 import { ENGINE_VERSION } from '../../src/conventions.ts';
 import { checkQuestion, type DesignQuestion } from '../../src/design/index.ts';
 import { Refusal } from '../../src/errors.ts';
-import { notFound, problemOfRefusal, staleChipRevision } from '../errors.ts';
+import { notFound, ProblemError, problemOfRefusal, staleChipRevision } from '../errors.ts';
 import type { ChipRecord, ChipRevisionRecord } from '../store/records.ts';
 import { sha256Hex } from './address.ts';
 import type { Context } from './context.ts';
@@ -57,7 +57,7 @@ function wouldBeAccepted(body: unknown, model: ChipModel): boolean {
 
 /** @throws ProblemError for everything that is no understandable request at the chip's head revision */
 export async function understand(context: Context, body: unknown): Promise<Question> {
-  const input = readInput(requestDesignRule, body);
+  const input = await readQuestion(context, body);
   const chip = await context.chipBySerial(input.chip);
   const asked = askedOf(body);
   requireHead(input, chip, asked);
@@ -66,6 +66,47 @@ export async function understand(context: Context, body: unknown): Promise<Quest
   const canonical = canonicalOf(input, model);
   const text = designText({ engine: ENGINE_VERSION, chipRevisionHash: revision.hash, ...canonical });
   return { input, asked, chip, revision, model, canonical, text, hash: sha256Hex(text) };
+}
+
+/** What mends a body for its rules may still be refused for the chip: every suggestion is followed until it is not. */
+async function readQuestion(context: Context, body: unknown): Promise<RequestDesignInput> {
+  try {
+    return readInput(requestDesignRule, body);
+  } catch (error) {
+    if (!(error instanceof ProblemError) || error.problem.nearest.length === 0) throw error;
+    const followed = await Promise.all(error.problem.nearest.map((offer) => followUp(context, offer)));
+    const nearest = followed.filter((offer) => offer !== null);
+    throw new ProblemError({ ...error.problem, nearest }, error.headers);
+  }
+}
+
+/** The suggestion if the chip answers it, else with the closed forms' own way on from there; null where there is none. */
+async function followUp(context: Context, offer: Nearest): Promise<Nearest | null> {
+  let question: Question;
+  try {
+    question = await understand(context, offer.input);
+  } catch (error) {
+    // An unknown chip or an older revision is another matter, and no reason against the suggestion.
+    if (error instanceof ProblemError) return offer;
+    throw error;
+  }
+  const answer = closedForm(question);
+  if (answer.ok) return offer;
+  const [next] = answer.problem.nearest;
+  if (next === undefined) return null;
+  // What the way on changes again is told once, as it ends up.
+  const kept = offer.changes.filter(
+    (change) => !next.changes.some(({ pointer }) => pointer === change.pointer),
+  );
+  const given = new Map(offer.changes.map((change) => [change.pointer, change.given]));
+  return {
+    reason: kept.length === 0 ? next.reason : `${offer.reason}; ${next.reason}`,
+    changes: [
+      ...kept,
+      ...next.changes.map((change) => ({ ...change, given: given.get(change.pointer) ?? change.given })),
+    ],
+    input: next.input,
+  };
 }
 
 function requireHead(input: RequestDesignInput, chip: ChipRecord, asked: object): void {

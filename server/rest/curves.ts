@@ -87,12 +87,19 @@ function inQueryTerms(error: unknown): unknown {
   if (!(error instanceof ProblemError)) return error;
   const renamed = (pointer: string): string =>
     pointer.replace(/^\/grid\/\w+$/, '/unit').replace(/^\/grid\/\w+/, '');
-  const { pointer, errors, ...problem } = error.problem;
+  const said = (detail: string): string =>
+    detail.replace(/\/grid\/\w+\/(\w+)/g, '/$1').replace(/\/grid\/\w+/g, 'The grid');
+  const { pointer, errors, detail, ...problem } = error.problem;
   return new ProblemError(
     {
       ...problem,
+      detail: said(detail),
       ...(pointer === undefined ? {} : { pointer: renamed(pointer) }),
-      errors: errors.map((field) => ({ ...field, pointer: renamed(field.pointer) })),
+      errors: errors.map((field) => ({
+        ...field,
+        pointer: renamed(field.pointer),
+        detail: said(field.detail),
+      })),
       // A whole input of the operation is no query that could be sent.
       nearest: [],
     },

@@ -11,7 +11,7 @@ afterAll(() => lab.close());
 const ask = (body: unknown) => lab.operations.requestDesign(lab.viewers.DESIGNER, body);
 const FAMILY = '/specification/family';
 
-const masked = (band: object) => ({ chip: 'X1', specification: { mask: { bands: [band] } } });
+const masked = (...bands: object[]) => ({ chip: 'X1', specification: { mask: { bands } } });
 
 describe('input that cannot be', () => {
   it.each([
@@ -80,7 +80,12 @@ describe('input that cannot be', () => {
 });
 
 describe('input that can be mended', () => {
-  const wrongUnit = (band: object) => withEdits(easyRequest(), [{ pointer: `${FAMILY}/band`, works: band }]);
+  // A band-pass lies around the middle of its band, wherever that is.
+  const wrongUnit = (band: object) =>
+    withEdits(easyRequest(), [
+      { pointer: `${FAMILY}/shape`, works: 'BAND_PASS' },
+      { pointer: `${FAMILY}/band`, works: band },
+    ]);
 
   it.each([
     [
@@ -108,10 +113,39 @@ describe('input that can be mended', () => {
     expect(problem).toMatchObject({ code: 'WRONG_UNIT', status: 422 });
     expect(problem.nearest).toHaveLength(1);
     expect(problem.nearest[0]?.input).toEqual(wrongUnit(works));
+    expect((await ask(problem.nearest[0]?.input)).id).toMatch(/^req_/);
+  });
+
+  it('[property] is followed until the chip takes it: a wavelength as a frequency, off the centre of a low-pass', async () => {
+    const band = { frequencyThz: { low: 1552.4, high: 1552.6 } };
+    const problem = await refusalOf(
+      ask(withEdits(easyRequest(), [{ pointer: `${FAMILY}/band`, works: band }])),
+    );
+    expect(problem).toMatchObject({ code: 'WRONG_UNIT', status: 422 });
+    expect(problem.nearest[0]?.reason).toMatch(/wavelength in nm; .*around the centre/);
+    expect((await ask(problem.nearest[0]?.input)).id).toMatch(/^req_/);
+  });
+
+  it.each([
+    ['an order of 0', 'order', 0],
+    ['an order of 1000', 'order', 1000],
+    ['an order of 65', 'order', 65],
+  ])('[property] is refused with the request to send: %s', async (_, member, value) => {
+    const problem = await refusalOf(
+      ask(withEdits(easyRequest(), [{ pointer: `${FAMILY}/${member}`, works: value }])),
+    );
+    expect(problem).toMatchObject({
+      code: 'SPECIFICATION_INVALID',
+      pointer: `${FAMILY}/${member}`,
+      given: value,
+    });
+    expect(problem.nearest[0]?.changes).toHaveLength(1);
+    expect((await ask(problem.nearest[0]?.input)).id).toMatch(/^req_/);
   });
 
   it('[property] is refused with the request to send: crossed edges', async () => {
-    const problem = await refusalOf(ask(wrongUnit({ offsetGhz: { low: 6, high: -6 } })));
+    const crossed = [{ pointer: `${FAMILY}/band`, works: { offsetGhz: { low: 6, high: -6 } } }];
+    const problem = await refusalOf(ask(withEdits(easyRequest(), crossed)));
     expect(problem).toMatchObject({ code: 'SPECIFICATION_INVALID', pointer: `${FAMILY}/band/offsetGhz` });
     expect(problem.nearest[0]?.input).toEqual(easyRequest());
     expect((await ask(problem.nearest[0]?.input)).id).toMatch(/^req_/);
@@ -119,8 +153,8 @@ describe('input that can be mended', () => {
 
   it('[property] is refused with the request to send: a rejection written without its sign', async () => {
     const interval = { offsetGhz: { low: -2, high: 2 } };
-    const body = masked({ interval, minTransmissionDb: 3 });
-    const problem = await refusalOf(ask(body));
+    const stopped = { interval: { offsetGhz: { low: 15, high: 25 } }, maxTransmissionDb: -5 };
+    const problem = await refusalOf(ask(masked({ interval, minTransmissionDb: 3 }, stopped)));
     expect(problem.nearest[0]?.changes).toEqual([
       { pointer: '/specification/mask/bands/0/minTransmissionDb', given: 3, works: -3, unit: 'dB' },
     ]);

@@ -160,7 +160,10 @@ describe('specifications', () => {
     const answer = await post(requestOf(wrong));
     expectProblem(answer, 422, 'WRONG_UNIT');
     expect(answer.json.pointer).toMatch(/^\/specification\/family\/centre/);
-    expect(answer.json.nearest[0].input).toEqual(requestOf(right));
+    const [offer] = answer.json.nearest;
+    expect(offer.input.specification.family.centre).toEqual(right.centre);
+    const check = { method: 'POST', body: offer.input };
+    expect((await service.call('/v1/specification-checks', check)).json.ok).toBe(true);
   });
 
   it('refuses a mask that lets nothing pass', async () => {

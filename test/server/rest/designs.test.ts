@@ -96,6 +96,7 @@ describe('its response', () => {
   ])('refuses %s in terms of the query', async (_, query, status, pointer) => {
     const answer = await get(`/response${query}`);
     expect([answer.status, answer.json.pointer], answer.text).toEqual([status, pointer]);
+    expect(answer.json.detail).not.toContain('/grid');
   });
 
   // Column order and empty fields: the service's contract; records and line ends: RFC 4180 sections 2.1 and 2.4.
