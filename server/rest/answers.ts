@@ -169,6 +169,7 @@ const setting = named(
     totalPowerMw: z.number(),
     parked: z.array(z.strictObject({ element: z.string(), how: z.string() })),
     cautions: z.array(z.strictObject({ code: z.string(), text: z.string(), channel: z.string().nullable() })),
+    temperatureC: z.number().nullable().describe('At which the calibration holds; null where not on record.'),
   }),
 );
 
@@ -176,6 +177,9 @@ const compliance = named(
   'Compliance',
   z.strictObject({
     met: z.boolean(),
+    reference: z
+      .enum(['INPUT', 'PEAK'])
+      .describe('What the dB of demands count from; PEAK for the family form.'),
     worstMarginDb: z.number().nullable(),
     bands: z.array(
       z.strictObject({
@@ -304,6 +308,7 @@ export const sheetAnswer = named(
     sequence: z.int().nullable(),
     channelCount: z.int().describe('Rows; a reader refuses a sheet that is short.'),
     channels: z.array(channelSetting.omit({ wraps: true })),
+    temperatureC: z.number().nullable().describe('At which the calibration holds; null where not on record.'),
   }),
 );
 

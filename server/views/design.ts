@@ -50,6 +50,7 @@ export function circuitView(design: Design, netlist: Netlist) {
 export function settingView(setting: Setting) {
   return {
     ...setting,
+    temperatureC: setting.temperatureC ?? null,
     cautions: setting.cautions.map((caution) => ({ ...caution, channel: caution.channel ?? null })),
   };
 }
@@ -57,6 +58,7 @@ export function settingView(setting: Setting) {
 export function complianceView(compliance: Compliance, frame: FrequencyFrame) {
   return {
     met: compliance.met,
+    reference: compliance.reference,
     worstMarginDb: Number.isFinite(compliance.worstMarginDb) ? compliance.worstMarginDb : null,
     bands: compliance.bands.map(({ index, band, worstAtGhz, ...demand }) => ({
       band: bandView(band, index, frame),

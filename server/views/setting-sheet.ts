@@ -30,7 +30,7 @@ export interface SettingSheet {
 }
 
 const HEADER =
-  'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa';
+  'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa,temperatureC';
 
 /** Decimal places of every number: 1 nA, 1 nW, 1 µrad. */
 const PLACES = 6;
@@ -86,9 +86,11 @@ export function settingSheetCsv(sheet: SettingSheet): string {
   const rows = rowsOf(setting);
   const head = [SHEET_LAYOUT, chip, chipRevision, configuration, version, release, sequence, rows.length];
   const before = head.map((value) => value ?? '').join(',');
+  // The layout's last column so far: an empty field where the chip's record has no temperature.
+  const temperature = setting.temperatureC === undefined ? '' : sheetNumber(setting.temperatureC);
   const lines = rows.map((row) => {
     const numbers = [row.currentMa, row.powerMw, row.phaseRad, row.limitMa].map(sheetNumber);
-    return [before, row.channel, row.drives, row.state, ...numbers].join(',');
+    return [before, row.channel, row.drives, row.state, ...numbers, temperature].join(',');
   });
   return `${[HEADER, ...lines].join('\r\n')}\r\n`;
 }
@@ -96,7 +98,8 @@ export function settingSheetCsv(sheet: SettingSheet): string {
 export function settingSheetJson(sheet: SettingSheet) {
   const { setting, ...names } = sheet;
   const channels = rowsOf(setting);
-  return { sheet: SHEET_LAYOUT, ...names, channelCount: channels.length, channels };
+  const temperatureC = setting.temperatureC ?? null;
+  return { sheet: SHEET_LAYOUT, ...names, channelCount: channels.length, channels, temperatureC };
 }
 
 export function designSheet(

@@ -1,7 +1,7 @@
 /**
  * Heaters: phases from electrical powers through thermal crosstalk,
  *   phase_i = phaseAtZeroRad_i + phasePerMw_i · Σ_j crosstalk_ij · power_j.
- * The one place where a heater's phase is made: its scaling with ν/ν₀ away from the reference frequency enters here.
+ * Phases hold at the reference frequency; they are used as they are over the whole FSR (0.05 % of change in 100 GHz at 193 THz).
  */
 import type { ChipModel } from './model.ts';
 

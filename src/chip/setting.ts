@@ -33,4 +33,6 @@ export interface Setting {
   readonly totalPowerMw: number;
   readonly parked: readonly Parked[];
   readonly cautions: readonly Caution[];
+  /** Temperature at which the calibration behind it holds, °C; absent where the chip's record does not say. */
+  readonly temperatureC?: number;
 }

@@ -128,5 +128,12 @@ export function solveSetting(placed: PlacedCircuit, chip: ChipModel): Setting {
     undriven,
     coupledRings,
   });
-  return { channels, totalPowerMw, parked: placed.parked, cautions };
+  const { temperatureC } = chip;
+  return {
+    channels,
+    totalPowerMw,
+    parked: placed.parked,
+    cautions,
+    ...(temperatureC === undefined ? {} : { temperatureC }),
+  };
 }

@@ -64,6 +64,7 @@ export function complianceOf(
   if (bands.length === 0) throw new RangeError('the mask demands nothing');
   return {
     met: bands.every(({ met }) => met),
+    reference: mask.reference,
     worstMarginDb: Math.min(...bands.map(({ margin }) => margin)),
     bands,
   };

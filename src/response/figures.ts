@@ -47,6 +47,17 @@ function insertionLoss(pass: ReturnType<typeof powerExtremesOver>): Value {
   return greatest <= NULL_DB ? { reason: 'nothing is transmitted in the passband' } : { value: -greatest };
 }
 
+/** A dip further below the peak than this is a null on any real chip: how deep is a matter of luck. */
+const NULL_BELOW_PEAK_DB = 60;
+
+function extinctionRatio(peak: number, leastPower: number): Value {
+  const ratioDb = toDb(peak) - toDb(leastPower);
+  if (ratioDb <= NULL_BELOW_PEAK_DB) return { value: ratioDb };
+  return {
+    reason: `the least transmission is a null, more than ${NULL_BELOW_PEAK_DB} dB below the peak; the depth of a null is no figure`,
+  };
+}
+
 function difference(greatestPower: number, leastPower: number, what: string): Value {
   const least = toDb(leastPower);
   if (least <= NULL_DB) return { reason: `${what} is a null, and the depth of a null is no figure` };
@@ -131,7 +142,7 @@ export function figuresOf(source: FieldSource, other: FieldSource | null, bands:
         ? { reason: NO_PASSBAND }
         : difference(pass.greatest.value, pass.least.value, 'the least transmission in the passband'),
     rejectionDb: rejection(source, bands, pass),
-    extinctionRatioDb: difference(peak, overFsr.least.value, 'the least transmission'),
+    extinctionRatioDb: extinctionRatio(peak, overFsr.least.value),
     bandwidth1DbGhz: widthValue(width1),
     bandwidth3DbGhz: widthValue(bandwidthOf(source, bands.centreGhz, 3, peak)),
     bandwidth20DbGhz: widthValue(width20),

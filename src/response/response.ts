@@ -1,5 +1,5 @@
 /** Curves, figures and compliance as the rest of the project sees them. */
-import type { Band } from '../filter/specification.ts';
+import type { Band, TransmissionReference } from '../filter/specification.ts';
 
 /** TARGET: transfer function. CIRCUIT: lossless circuit. CHIP: with loss. SETTING: as set, crosstalk and rounding in. */
 export type Stage = 'TARGET' | 'CIRCUIT' | 'CHIP' | 'SETTING';
@@ -48,6 +48,8 @@ export interface BandCompliance {
 
 export interface Compliance {
   readonly met: boolean;
+  /** What the dB of demands and levels count from. */
+  readonly reference: TransmissionReference;
   readonly worstMarginDb: number;
   readonly bands: readonly BandCompliance[];
 }

@@ -59,7 +59,7 @@ import { PROBLEM_TABLE } from '../../server/problem-table.ts';
 
 const FOLDER = new URL('../../schema/', import.meta.url);
 const SDL = readdirSync(FOLDER)
-  .filter((name) => name.endsWith('.graphql'))
+  .filter((name) => name.endsWith('.graphql') && name !== 'published.graphql')
   .map((name) => readFileSync(new URL(name, FOLDER), 'utf8'))
   .join('\n');
 const schema = buildSchema(SDL);

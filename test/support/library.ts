@@ -209,7 +209,7 @@ export function inventedDesign(
     circuit: { cells: [], join: 'OUT1' } as unknown as Design['circuit'],
     setting: SETTING,
     mask: { kind: 'MASK', bands: [], reference: 'INPUT' } as unknown as Design['mask'],
-    compliance: { met: true, worstMarginDb: 0.7, bands: [] },
+    compliance: { met: true, reference: 'PEAK', worstMarginDb: 0.7, bands: [] },
     figures: {
       insertionLossDb,
       rippleDb: 0.3,

@@ -179,7 +179,7 @@ describe('versions', () => {
     expect(csv.headers.get('content-type')).toBe('text/csv; charset=utf-8; header=present');
     const lines = csv.text.split('\r\n');
     expect(lines[0]).toBe(
-      'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa',
+      'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa,temperatureC',
     );
     const count = inventedChip().channels.length;
     expect(lines.length).toBe(count + 2);

@@ -44,6 +44,7 @@ const SHEET: SettingSheet = {
     totalPowerMw: 13.6125,
     parked: [],
     cautions: [],
+    temperatureC: 25,
   },
 };
 
@@ -60,9 +61,9 @@ function readCsv(text: string): string[][] {
 describe('a setting sheet', () => {
   it('[property] reads as the contract shows it', () => {
     expect(settingSheetCsv(SHEET)).toBe(
-      'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa\r\n' +
-        '1,B7-04,3,il50,7,current,12,2,03,cell1.ring2.phase,ACTIVE,4.125,13.6125,1.2043,12\r\n' +
-        '1,B7-04,3,il50,7,current,12,2,04,cell1.arm.phase,UNUSED,0,0,0,12\r\n',
+      'sheet,chip,chipRevision,configuration,version,release,sequence,channelCount,channel,drives,state,currentMa,powerMw,phaseRad,limitMa,temperatureC\r\n' +
+        '1,B7-04,3,il50,7,current,12,2,03,cell1.ring2.phase,ACTIVE,4.125,13.6125,1.2043,12,25\r\n' +
+        '1,B7-04,3,il50,7,current,12,2,04,cell1.arm.phase,UNUSED,0,0,0,12,25\r\n',
     );
   });
 
@@ -88,7 +89,7 @@ describe('a setting sheet', () => {
       setting: { ...SHEET.setting, channels: [{ ...channel!, currentMa, limitMa }] },
     });
     const [, row] = readCsv(settingSheetCsv(withChannel(17.8885438, 17.8885438)));
-    expect(row?.slice(-4)).toEqual(['17.888543', '13.6125', '1.2043', '17.888543']);
+    expect(row?.slice(-5, -1)).toEqual(['17.888543', '13.6125', '1.2043', '17.888543']);
     expect(() => settingSheetCsv(withChannel(17.9, 17.8))).toThrow(RangeError);
     expect(() => settingSheetCsv(withChannel(-1, 17.8))).toThrow(RangeError);
   });
