@@ -51,7 +51,7 @@ export function heatingOf(targets: ThermalTargets, chip: ChipModel): Heating {
     throw new Refusal({
       code: 'SETTING_UNREACHABLE',
       detail:
-        "The crosstalk matrix of this chip's channels is nearly singular: the heaters cannot be set apart.",
+        'The heaters of this chip cannot be set apart: what they do to its phases (phasePerMw and crosstalk together) is a nearly singular matrix.',
       given: inverted?.condition ?? null,
       allowed: { max: MAX_CONDITION },
     });

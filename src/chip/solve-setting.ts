@@ -4,12 +4,30 @@ import { cautionsOf } from './cautions.ts';
 import { channelLimit, currentMa, powerMw, roundToStep } from './currents.ts';
 import { type Heating, heatingOf, type LeastHeat, leastHeat, offTurn } from './heat.ts';
 import { phasesFromPowers } from './heaters.ts';
-import type { ChipModel } from './model.ts';
+import type { ChipModel, DriverChannel } from './model.ts';
 import type { PlacedCircuit } from './placed.ts';
 import type { ChannelSetting, ChannelState, Setting } from './setting.ts';
 import { thermalTargets, wantedPhase } from './targets.ts';
 
 const TURN = 2 * Math.PI;
+
+/** Digits enough to tell a need from a limit that it misses by a hair. */
+const shown = (value: number): string => String(Number(value.toPrecision(8)));
+
+/** The limit would allow the current; the last driver step below the limit is short of it. */
+function refuseSteps(channel: DriverChannel, needMa: number, mostMa: number): never {
+  throw new Refusal({
+    code: 'SETTING_UNREACHABLE',
+    limit: 'CHANNEL_CURRENT',
+    detail:
+      `Channel ${channel.channel} (${channel.drives}) would need ${shown(needMa)} mA; in steps of ` +
+      `${channel.resolutionMa} mA its driver gives ${shown(mostMa)} mA at the most within its limit.`,
+    channel: channel.channel,
+    element: channel.drives,
+    given: needMa,
+    allowed: mostMa,
+  });
+}
 
 /** Where not all limits can be met: refuses with the channel that would be furthest beyond its own. */
 function checkLimits(heating: Heating, { solution, floorsKept }: LeastHeat, chip: ChipModel): void {
@@ -22,12 +40,14 @@ function checkLimits(heating: Heating, { solution, floorsKept }: LeastHeat, chip
   const limit = channelLimit(channel);
   const byPower = limit.kind === 'CHANNEL_POWER';
   const needMa = currentMa(needMw, channel.resistanceOhm);
+  const inSteps = roundToStep(limit.currentMa, channel);
+  if (needMa <= limit.currentMa) refuseSteps(channel, needMa, inSteps);
   throw new Refusal({
     code: 'SETTING_UNREACHABLE',
     limit: limit.kind,
     detail:
-      `Channel ${channel.channel} (${channel.drives}) would need ${needMa.toFixed(4)} mA, ${needMw.toFixed(3)} mW; ` +
-      `its ${byPower ? 'power' : 'current'} limit allows ${limit.currentMa.toFixed(4)} mA.`,
+      `Channel ${channel.channel} (${channel.drives}) would need ${shown(needMa)} mA, ${shown(needMw)} mW; ` +
+      `its ${byPower ? 'power' : 'current'} limit allows ${shown(limit.currentMa)} mA.`,
     channel: channel.channel,
     element: channel.drives,
     given: byPower ? needMw : needMa,

@@ -1,5 +1,6 @@
 /** What the joint optimisation of a cascade is told about chip and mask. */
 import type { ChipModel } from '../chip/index.ts';
+import { Refusal } from '../errors.ts';
 import type { FilterPlan, OutputPort } from '../filter/index.ts';
 import {
   type CascadeOptions,
@@ -26,21 +27,35 @@ export function optionsFor(chip: ChipModel): Partial<CascadeOptions> {
   const undercoupled = 1 - 10 ** (-turnDb / 10);
   const rings = reachOf(chip, (element) => element.startsWith('ring'));
   const ends = reachOf(chip, (element) => !element.startsWith('ring'));
+  const leastUseful = Math.max(1e-3, UNDERCOUPLING_MARGIN * undercoupled);
+  if (leastUseful > rings.max) refuseCouplings(leastUseful, rings.max, turnDb);
   return {
     losses: { ringLossDb: unitDelayLossDb, couplerExcessLossDb },
     couplers: turnDb > NEARLY_LOSSLESS_DB && ends.min === 0 && ends.max === 1 ? 'FREE' : 'BALANCED',
-    minimumCoupling: Math.max(1e-3, rings.min, UNDERCOUPLING_MARGIN * undercoupled),
+    // Reaches that do not meet leave one value to start from; what fits each ring is decided when it is placed.
+    minimumCoupling: Math.min(rings.max, Math.max(leastUseful, rings.min)),
     maximumCoupling: rings.max,
   };
+}
+
+function refuseCouplings(leastNeeded: number, greatest: number, turnDb: number): never {
+  throw new Refusal({
+    code: 'SPECIFICATION_UNREACHABLE',
+    limit: 'COUPLING_RANGE',
+    detail:
+      `A ring of this chip loses ${turnDb} dB a turn: it shapes light only if coupled by more than ` +
+      `${leastNeeded.toPrecision(6)}, and what all its rings reach ends at ${greatest}.`,
+    given: greatest,
+    allowed: { above: leastNeeded },
+  });
 }
 
 export function optimiseOver(
   plan: FilterPlan,
   outputs: readonly OutputPort[],
-  chip: ChipModel,
+  mask: OmegaMask,
   options: Partial<CascadeOptions>,
 ): OptimisedCascade {
-  const mask = omegaMaskOf(plan, chip.fsrGhz);
   const goal = mask.reference === 'INPUT' ? 'GREATEST_MARGIN' : 'LEAST_LOSS';
   return optimiseCascade(plan.filter, outputs, mask, { ...options, goal });
 }
@@ -54,7 +69,8 @@ function reachOf(chip: ChipModel, isMeant: (element: string) => boolean): { min:
   };
 }
 
-function omegaMaskOf({ mask }: FilterPlan, fsrGhz: number): OmegaMask {
+/** The plan's mask over Ω, with the reserve for rounding in its levels. */
+export function omegaMaskOf({ mask }: FilterPlan, fsrGhz: number): OmegaMask {
   return {
     reference: mask.reference,
     bands: mask.bands.map((band) => ({
