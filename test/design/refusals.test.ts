@@ -180,6 +180,14 @@ describe('how much a chip holds', () => {
     expect(order(2, chip)).toEqual({ maxOrder: 0 });
   });
 
+  it('[regression] a mask asked for at more order than there is names both, and offers no change that changes nothing', () => {
+    const bands = [pass(-10, 10, -1), stop(25, 75, -20)];
+    const mask = { bands, reference: 'INPUT', order: 9 } as const;
+    const { detail, nearest } = refusalOf({ specification: { mask }, synthesis: {} }, oneCell());
+    expect(detail).toMatch(/^Order 9 is asked for; the mask needs order 2 .*order 4 at the most/);
+    expect(nearest?.map(({ reason }) => reason)).toEqual(['order 2']);
+  });
+
   it('[regression] an interleaver as a cascade is refused at once, and the pair that is suggested is accepted', () => {
     const chip = oneCell({ cells: [{ name: 'c1', ringsPerArm: [2, 2] }] });
     const interleaver = {

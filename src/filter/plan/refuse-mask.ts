@@ -22,13 +22,15 @@ export function refuseMaskOrder(
   const needed = Math.min(...tried.map((one) => one.leastOrder ?? Number.POSITIVE_INFINITY));
   const most = Math.min(capacity.order, mask.order ?? capacity.order);
   const limit = mask.order !== undefined && mask.order <= capacity.order ? 'ORDER' : capacity.limit;
+  const asked =
+    mask.order !== undefined && mask.order > capacity.order ? `Order ${mask.order} is asked for; the` : 'The';
   const strictest = understood.own
     .filter((band) => band.kind === 'STOP')
     .reduce((a, b) => (b.levelDb > a.levelDb ? b : a));
   throw new Refusal({
     code: 'SPECIFICATION_UNREACHABLE',
     limit,
-    detail: `The mask needs ${describeOrder(needed)} (${mask.family ?? 'the best of the four families'}); ${describeCapacity({ ...capacity, order: most, limit })}.`,
+    detail: `${asked} mask needs ${describeOrder(needed)} (${mask.family ?? 'the best of the four families'}); ${describeCapacity({ ...capacity, order: most, limit })}.`,
     pointer:
       mask.order === undefined ? `/specification/mask/bands/${strictest.index}` : '/specification/mask/order',
     given: mask.order ?? mask.bands[strictest.index]!.maxTransmissionDb ?? null,
@@ -59,7 +61,8 @@ function suggestions(
   const { family, rejectionDb } = bestReach(understood, mask.family ? [mask.family] : FAMILIES, most);
   const typed = typedRejectionDb(rejectionDb, understood.demand.rippleDb);
   const less = typed === null ? null : lessRejection(mask, understood, typed);
-  if (less) list.push({ reason: 'the same edges, less rejection', changes: [...less, ...order] });
+  if (less && less.length > 0)
+    list.push({ reason: 'the same edges, less rejection', changes: [...less, ...order] });
   const { passEdgeRad, rippleDb, stops } = understood.demand;
   const strictestDb = Math.max(...stops.map((stop) => stop.rejectionDb));
   const edgeRad = reachableStopEdgeRad(family, most, { passEdgeRad, rippleDb, rejectionDb: strictestDb });
