@@ -1,80 +1,46 @@
-/** What was compared, in which order it is preferred, and how that is said. */
+/** How a choice and what was compared beside it are said. */
 import type { ChipModel } from '../chip/index.ts';
-import type { Refusal } from '../errors.ts';
-import type { Architecture, Family } from '../filter/index.ts';
+import type { Architecture } from '../filter/index.ts';
 import type { Compliance } from '../response/index.ts';
 import { orderOn } from './capacity.ts';
 import type { Alternative } from './design.ts';
 import { exactCascadeLossDb } from './exact-cascade.ts';
+import { type Group, isSet, type SetGroup } from './groups.ts';
 import { insertionLossOf, type Realisation, usesBothOutputs } from './realisation.ts';
-
-/** One family in one architecture at one order: its best realisation on the chip, or why there is none. */
-export interface Group {
-  readonly family: Family;
-  readonly architecture: Architecture;
-  readonly order: number;
-  readonly best: Realisation | null;
-  readonly refusal: Refusal | null;
-}
-
-export type OpenGroup = Group & { readonly best: Realisation };
-
-const isOpen = (group: Group): group is OpenGroup => group.best !== null;
-
-/**
- * Those that meet the mask with the chip's losses first, cheapest (fewest rings) first and then by margin; then those
- * that miss it, by how little. Throws the first refusal when nothing fits the chip.
- */
-export function rank(groups: readonly Group[]): OpenGroup[] {
-  const open = groups.filter(isOpen);
-  const refusal = groups.find((group) => group.refusal !== null)?.refusal;
-  if (open.length === 0 && refusal) throw refusal;
-  return open.sort((a, b) => {
-    const met = Number(b.best.onChip.met) - Number(a.best.onChip.met);
-    if (met !== 0) return met;
-    const margin = b.best.onChip.worstMarginDb - a.best.onChip.worstMarginDb;
-    return a.best.onChip.met ? a.order - b.order || margin : margin;
-  });
-}
 
 const NAMES: Record<Architecture, string> = {
   ALL_PASS_PAIR: 'an all-pass pair',
   SECTION_CASCADE: 'a cascade of sections',
 };
 
-/** @param set compliance of the chosen one's setting, crosstalk and driver steps included */
-export function reasonFor(
-  chosen: OpenGroup,
-  groups: readonly Group[],
-  told: boolean,
-  set: Compliance,
-): string {
-  const { family, order, architecture, best } = chosen;
-  const others = groups.filter((group) => group !== chosen && isOpen(group)).length;
-  const met = best.onChip.met
-    ? `meets the mask on this chip with its losses by ${best.onChip.worstMarginDb.toFixed(2)} dB`
-    : `comes nearest to the mask on this chip with its losses (worst margin ${best.onChip.worstMarginDb.toFixed(2)} dB)`;
+export function reasonFor(chosen: SetGroup, groups: readonly Group[], told: boolean): string {
+  const { family, order, architecture, best, compliance } = chosen;
+  const others = groups.filter((group) => group !== chosen && isSet(group)).length;
   const asked = told ? ' (as asked)' : '';
   const compared = others > 0 ? `, best of ${others + 1} compared: fewest rings first, then margin` : '';
-  const steps =
-    set.met === best.onChip.met
-      ? ''
-      : ` The setting, in whole driver steps, ${set.met ? 'meets' : 'misses'} it (worst margin ${set.worstMarginDb.toPrecision(2)} dB).`;
   const remarks = best.remarks.length > 0 ? ` ${best.remarks.join(' ')}` : '';
-  return `${family} of order ${order} as ${NAMES[architecture]}${asked} ${met}${compared}.${steps}${remarks}`;
+  return `${family} of order ${order} as ${NAMES[architecture]}${asked} ${verdict(compliance)} as set on this chip${compared}.${remarks}`;
+}
+
+/** Two digits, however small: a mask missed by 0.004 dB is missed. */
+function verdict({ met, worstMarginDb }: Compliance): string {
+  const size = Math.abs(worstMarginDb);
+  const margin = size < 0.01 ? (size < 1e-6 ? '0' : size.toPrecision(1)) : size.toFixed(2);
+  return met ? `meets the mask by ${margin} dB` : `misses the mask by ${margin} dB`;
 }
 
 export function alternativeOf(group: Group, chosen: boolean, chip: ChipModel): Alternative {
   const { family, architecture, order, best, refusal } = group;
+  const set = isSet(group) ? group : null;
   return {
     family,
     architecture,
     order,
     rings: best === null ? order : ringsUsed(best),
-    fits: best !== null,
-    worstMarginDb: best === null ? null : best.onChip.worstMarginDb,
+    fits: set !== null,
+    worstMarginDb: set?.compliance.worstMarginDb ?? null,
     insertionLossDb: best === null ? null : insertionLossOf(best, chip),
-    reason: chosen ? 'chosen' : (refusal?.message ?? describe(best!)),
+    reason: chosen ? 'chosen' : (refusal?.message ?? verdict(set!.compliance)),
   };
 }
 
@@ -82,23 +48,24 @@ export function alternativeOf(group: Group, chosen: boolean, chip: ChipModel): A
 const ringsUsed = ({ placed }: Realisation): number =>
   placed.cells.reduce((sum, cell) => sum + cell.rings.filter((ring) => !ring.parked).length, 0);
 
-function describe(best: Realisation): string {
-  const { met, worstMarginDb } = best.onChip;
-  return met
-    ? `meets the mask by ${worstMarginDb.toFixed(2)} dB`
-    : `misses the mask by ${(-worstMarginDb).toFixed(2)} dB`;
-}
+/** Below this, dB, a loss is rounding. */
+const NO_LOSS_DB = 1e-9;
 
 /** Beside a chosen pair: what the same filter would lose as exact sections, known in closed form without placing it. */
-export function cascadeBeside(chosen: OpenGroup, groups: readonly Group[], chip: ChipModel): Alternative[] {
+export function cascadeBeside(chosen: SetGroup, groups: readonly Group[], chip: ChipModel): Alternative[] {
   const { plan } = chosen.best;
-  if (
-    chosen.architecture !== 'ALL_PASS_PAIR' ||
-    groups.some((group) => group.architecture === 'SECTION_CASCADE')
-  )
-    return [];
-  const lossDb = exactCascadeLossDb(plan.filter, plan.centreRad);
+  const compared = groups.some((group) => group.architecture === 'SECTION_CASCADE');
+  if (chosen.architecture !== 'ALL_PASS_PAIR' || compared) return [];
+  const exactDb = exactCascadeLossDb(plan.filter, plan.centreRad);
+  const lossDb = exactDb < NO_LOSS_DB ? 0 : exactDb;
   const fits = orderOn(chip, 'SECTION_CASCADE') >= plan.order && !usesBothOutputs(plan);
+  const loss =
+    lossDb === 0
+      ? 'as one exact passive section the filter loses nothing either'
+      : `as exact passive sections the filter would lose ${lossDb.toFixed(1)} dB before any loss of the chip, the pair none`;
+  const place = fits
+    ? 'the pair served and no cascade was optimised'
+    : 'it does not fit the cells of this chip';
   return [
     {
       family: plan.family,
@@ -108,7 +75,7 @@ export function cascadeBeside(chosen: OpenGroup, groups: readonly Group[], chip:
       fits,
       worstMarginDb: null,
       insertionLossDb: lossDb,
-      reason: `as exact passive sections the filter would lose ${lossDb.toFixed(1)} dB before any loss of the chip, the pair none; ${fits ? 'joint optimisation over the mask would make that less, and was not needed' : 'and it does not fit the cells of this chip'}`,
+      reason: `${loss}; ${place}`,
     },
   ];
 }

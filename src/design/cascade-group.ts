@@ -14,10 +14,10 @@ import {
   sectionOf,
   synthesiseSectionCascade,
 } from '../synthesis/index.ts';
-import type { Group } from './alternatives.ts';
 import { orderOn } from './capacity.ts';
-import { optimiseOver, optionsFor } from './cascade-optimisation.ts';
+import { omegaMaskOf, optimiseOver, optionsFor } from './cascade-optimisation.ts';
 import type { TransferFunctionRecord } from './design.ts';
+import type { Group } from './groups.ts';
 import { judge, otherPort } from './judge.ts';
 import { insertionLossOf, isDark, parkAngle, type Realisation, usesBothOutputs } from './realisation.ts';
 import { darkRecord, transferFunctionRecord } from './records.ts';
@@ -66,10 +66,12 @@ function realiseCascade(plan: FilterPlan, chip: ChipModel, onProgress: (part: nu
   const outputs: OutputPort[] = Array.from({ length: sectionCount(plan.order) }, () => plan.output);
   const options = optionsFor(chip);
   const exact = synthesiseSectionCascade(plan.filter, outputs);
+  const mask = omegaMaskOf(plan, chip.fsrGhz);
+  const optimised = optimiseOver(plan, outputs, mask, { ...options, onProgress });
+  const startingCells = [optimised.cells.map((cell) => cell.interferometer)];
   const tradeOff = (tell: (part: number) => void) =>
-    tradeOffOf(plan, outputs, { ...options, onProgress: tell }, chip);
+    tradeOffOf(plan, outputs, mask, { ...options, startingCells, onProgress: tell }, chip);
   const first = attempt(plan, exact.cells, chip, [`Exact sections: ${exact.reason}`], tradeOff);
-  const optimised = optimiseOver(plan, outputs, chip, { ...options, onProgress });
   const lossless = optimised.cells.map((cell) => withoutLosses(cell));
   const second = attempt(
     plan,

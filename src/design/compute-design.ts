@@ -1,19 +1,17 @@
 /**
  * The whole way: question → filters → circuits → chip → setting → response → compliance. Which filter and which
- * architecture is decided by what they do on this chip with its losses; the setting is then simulated back through
- * crosstalk and rounding, and that response is what is judged.
+ * architecture is decided by what their settings do on this chip: simulated back through crosstalk, rounding and losses.
  */
-import { type ChipModel, circuitOfSetting, type Setting, solveSetting } from '../chip/index.ts';
+import { type ChipModel, circuitOfSetting } from '../chip/index.ts';
 import { Refusal } from '../errors.ts';
-import { complianceOf } from '../response/index.ts';
-import { alternativeOf, cascadeBeside, type Group, type OpenGroup, rank, reasonFor } from './alternatives.ts';
+import { alternativeOf, cascadeBeside, reasonFor } from './alternatives.ts';
 import { cascadeGroup } from './cascade-group.ts';
 import { plansFor } from './check-question.ts';
 import type { Design, DesignQuestion } from './design.ts';
+import { choose, type Group, isSet, type SetGroup, withSettings } from './groups.ts';
 import { figureBands, figuresFrom, sourcesOf } from './judge.ts';
 import { withNearest } from './nearest.ts';
 import { pairGroups } from './pair-groups.ts';
-import type { Realisation } from './realisation.ts';
 import { cellRecord } from './records.ts';
 
 export interface DesignHooks {
@@ -21,9 +19,9 @@ export interface DesignHooks {
   readonly onProgress?: (fraction: number) => void;
 }
 
-/** Shares of the work after which progress is told: candidates compared, setting solved. */
+/** Shares of the work after which progress is told: pairs compared, cascades compared. */
+const PAIRS = 0.4;
 const COMPARED = 0.8;
-const SET = 0.9;
 
 /**
  * @throws Refusal when no circuit or setting exists; `NoConvergence` when a solver gives up (a defect)
@@ -38,61 +36,58 @@ export function computeDesign(question: DesignQuestion, chip: ChipModel, hooks: 
 }
 
 function designFor(question: DesignQuestion, chip: ChipModel, hooks: DesignHooks): Design {
-  const { synthesis } = question;
+  const { architecture } = question.synthesis;
   const tell = hooks.onProgress ?? (() => {});
   const families = plansFor(question, chip);
-  const groups: Group[] = [];
-  if (synthesis.architecture !== 'SECTION_CASCADE')
-    groups.push(...pairGroups(families, chip, (part) => tell(0.4 * part)));
-  const pairFits = groups.some((group) => group.best !== null);
-  if (synthesis.architecture === 'SECTION_CASCADE' || !pairFits) {
-    groups.push(...cascadeGroup(families, chip, (part) => tell(0.4 + (COMPARED - 0.4) * part)));
-  }
+  const pairs =
+    architecture === 'SECTION_CASCADE'
+      ? []
+      : withSettings(
+          pairGroups(families, chip, (part) => tell(PAIRS * part)),
+          chip,
+        );
+  const cascades = wantsCascade(question, pairs)
+    ? withSettings(
+        cascadeGroup(families, chip, (part) => tell(PAIRS + (COMPARED - PAIRS) * part)),
+        chip,
+      )
+    : [];
+  const groups = [...pairs, ...cascades];
   tell(COMPARED);
-  const ranked = rank(groups);
-  const { group, setting } = firstThatSets(ranked, chip);
-  tell(SET);
-  const told = synthesis.architecture !== undefined;
-  const design = designOf(group, setting, groups, chip, told, (part) => tell(SET + (1 - SET) * part));
+  const chosen = choose(groups);
+  const design = designOf(chosen, groups, chip, architecture !== undefined, (part) =>
+    tell(COMPARED + (1 - COMPARED) * part),
+  );
   tell(1);
   return design;
 }
 
-/** The best realisation whose heaters stay within their limits; if none does, why the best does not. */
-function firstThatSets(
-  ranked: readonly OpenGroup[],
-  chip: ChipModel,
-): { group: OpenGroup; setting: Setting } {
-  let first: Refusal | null = null;
-  for (const group of ranked) {
-    try {
-      return { group, setting: solveSetting(group.best.placed, chip) };
-    } catch (error) {
-      if (!(error instanceof Refusal)) throw error;
-      first ??= error;
-    }
-  }
-  throw first ?? new Error('nothing was ranked');
+/**
+ * A cascade takes seconds and loses light, so it is tried where it is asked for or where no pair serves: none can be set,
+ * or a mask is missed. A family's own edges are never missed for that: the pair is the filter that was asked for.
+ */
+function wantsCascade({ specification, synthesis }: DesignQuestion, pairs: readonly Group[]): boolean {
+  if (synthesis.architecture !== undefined) return synthesis.architecture === 'SECTION_CASCADE';
+  const set = pairs.filter(isSet);
+  return set.length === 0 || (specification.mask !== undefined && !set.some((pair) => pair.compliance.met));
 }
 
 function designOf(
-  chosen: OpenGroup,
-  setting: Setting,
+  chosen: SetGroup,
   groups: readonly Group[],
   chip: ChipModel,
   told: boolean,
   tellTradeOff: (part: number) => void,
 ): Design {
-  const realisation: Realisation = chosen.best;
+  const { best: realisation, setting, compliance } = chosen;
   const { plan, placed, architecture } = realisation;
   const sources = sourcesOf(circuitOfSetting(setting, chip), chip.fsrGhz);
-  const compliance = complianceOf(sources, plan.mask);
   const centreGhz = (plan.centreRad * chip.fsrGhz) / (2 * Math.PI);
   return {
     order: plan.order,
     family: plan.family,
     architecture,
-    reason: reasonFor(chosen, groups, told, compliance),
+    reason: reasonFor(chosen, groups, told),
     alternatives: [
       ...groups.map((group) => alternativeOf(group, group === chosen, chip)),
       ...cascadeBeside(chosen, groups, chip),

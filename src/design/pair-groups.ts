@@ -2,7 +2,7 @@
 import type { ChipModel } from '../chip/index.ts';
 import { Refusal } from '../errors.ts';
 import type { FamilyPlans, FilterPlan } from '../filter/index.ts';
-import type { Group } from './alternatives.ts';
+import type { Group } from './groups.ts';
 import { type Realisation, realisePair } from './realisation.ts';
 
 /** dB of margin within which two variants count as equal; then the one with the least largest pole radius wins. */

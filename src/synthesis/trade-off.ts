@@ -3,7 +3,6 @@
  * a law. Every point starts from all pairings and from the solution of the edge before, which stays within the next
  * one's demands, so that the loss never rises with the edge.
  */
-import type { InterferometerParameters } from '../circuit/index.ts';
 import type { OutputPort, TransferFunction } from '../filter/index.ts';
 import type { CascadeOptions } from './cascade-options.ts';
 import type { OmegaMask } from './mask-problem.ts';
@@ -43,29 +42,29 @@ export function passbandMask(ask: PassbandAsk, stopEdgeRad: number): OmegaMask {
 }
 
 /**
- * Least loss at each stop edge, in ascending order of edge. One optimisation a point. Progress over all points; throws as
- * `optimiseCascade` does.
+ * Least loss at each stop edge, in ascending order of edge; `maskAt` gives the mask of an edge. One optimisation a point,
+ * the first started from `startingCells` too. Progress over all points; throws as `optimiseCascade` does.
  */
 export function cascadeTradeOff(
   filter: TransferFunction,
   outputs: readonly OutputPort[],
-  ask: PassbandAsk,
+  maskAt: (stopEdgeRad: number) => OmegaMask,
   stopEdgesRad: readonly number[],
-  options: Partial<Omit<CascadeOptions, 'goal' | 'startingCells'>> = {},
+  options: Partial<Omit<CascadeOptions, 'goal'>> = {},
 ): TradeOffPoint[] {
   const edges = [...stopEdgesRad].sort((a, b) => a - b);
   const points: TradeOffPoint[] = [];
-  let before: readonly InterferometerParameters[] | null = null;
+  let before = options.startingCells ?? [];
   edges.forEach((stopEdgeRad, index) => {
     const { onProgress } = options;
-    const cascade = optimiseCascade(filter, outputs, passbandMask(ask, stopEdgeRad), {
+    const cascade = optimiseCascade(filter, outputs, maskAt(stopEdgeRad), {
       ...options,
       goal: 'LEAST_LOSS',
-      startingCells: before === null ? [] : [before],
+      startingCells: before,
       ...(onProgress ? { onProgress: (share: number) => onProgress((index + share) / edges.length) } : {}),
     });
     points.push({ stopEdgeRad, insertionLossDb: cascade.met ? cascade.insertionLossDb : null, cascade });
-    before = cascade.met ? cascade.cells.map((cell) => cell.interferometer) : before;
+    before = cascade.met ? [cascade.cells.map((cell) => cell.interferometer)] : before;
   });
   return points;
 }

@@ -23,6 +23,8 @@ import { circuitError, everyday, pass, stop } from './designs.ts';
 const FIELD = 1e-9;
 /** A driver step of 1e-12 mA, and the rounding of a hundred phases. */
 const IDEAL_SETTING = 1e-6;
+/** Demands met exactly at a steep edge: rounding of the edge itself. */
+const EDGE_DB = 1e-4;
 /** Two evaluations of the same figure from the same record. */
 const AGAIN_DB = 1e-9;
 
@@ -133,6 +135,53 @@ describe.each(cases)('%s', (_title, specification, chip, architecture) => {
   });
 });
 
+describe('everyday requirements are kept by the lossless circuit', () => {
+  const kept: readonly (readonly [
+    string,
+    FilterSpecification,
+    ChipModel,
+    'ALL_PASS_PAIR' | 'SECTION_CASCADE',
+  ])[] = [
+    [
+      'Chebyshev II, 10 dB from 0.5π, as a pair',
+      everyday.chebyshevII(100, 'OUT2'),
+      sixRingChip,
+      'ALL_PASS_PAIR',
+    ],
+    [
+      'Chebyshev II, 10 dB from 0.5π, as a section',
+      everyday.chebyshevII(100, 'OUT2'),
+      twoCellChip,
+      'SECTION_CASCADE',
+    ],
+    ['elliptic, 2 dB and 40 dB, as a pair', everyday.elliptic(100, 'OUT2'), sixRingChip, 'ALL_PASS_PAIR'],
+    [
+      'elliptic, 2 dB and 40 dB, as two sections',
+      everyday.elliptic(100, 'OUT2'),
+      twoCellChip,
+      'SECTION_CASCADE',
+    ],
+  ];
+
+  it.each(kept)(
+    '%s [cross-check: common practice, no source]',
+    (_title, specification, chip, architecture) => {
+      const ideal = ideally(chip);
+      const design = ask(specification, ideal, architecture);
+      const { bands } = stageCompliance(design, ideal, 'CIRCUIT');
+      const { rejectionDb, rippleDb, band } = specification.family!;
+      const stopband = bands.find((one) => one.quantity === 'MAX_TRANSMISSION_DB')!;
+      expect(stopband.demand).toBe(-rejectionDb!);
+      expect(stopband.margin).toBeGreaterThan(-EDGE_DB);
+      const passband = bands.find((one) => one.quantity === 'MIN_TRANSMISSION_DB')!;
+      expect(passband.margin).toBeGreaterThan(-EDGE_DB);
+      if (rippleDb !== undefined)
+        expect([passband.demand, passband.band.highGhz]).toEqual([-rippleDb, band!.highGhz]);
+      else expect(stopband.band.lowGhz).toBeCloseTo(band!.highGhz, 9);
+    },
+  );
+});
+
 describe('the choice', () => {
   it('takes the all-pass pair where it fits and says what the cascade would lose [cross-check]', () => {
     const design = ask(everyday.elliptic(100, 'OUT2'), sixRingChip);
@@ -189,6 +238,21 @@ describe('the cascade', () => {
       expect(loss).toBeLessThanOrEqual(losses[i]! + 0.05);
     });
   });
+
+  it.each(['INPUT', 'PEAK'] as const)(
+    'trades loss against stop edge over the mask that was asked for, counted from %s [property]',
+    (reference) => {
+      const mask: FilterSpecification = {
+        mask: { reference, bands: [pass(-20, 20, -3), stop(35, 65, -30)] },
+      };
+      const { tradeOff, figures } = ask(mask, twoCellChip, 'SECTION_CASCADE');
+      expect(tradeOff.length).toBeGreaterThan(1);
+      const losses = [figures.insertionLossDb!, ...tradeOff.map((point) => point.insertionLossDb!)];
+      losses.slice(1).forEach((loss, i) => {
+        expect(loss).toBeLessThanOrEqual(losses[i]! + 0.05);
+      });
+    },
+  );
 
   it('is refused for a mask on both outputs', () => {
     expect(() => ask(interleaver, twoCellChip, 'SECTION_CASCADE')).toThrow(Refusal);

@@ -127,7 +127,7 @@ describe('joint optimisation of two cells over the half-band mask', () => {
 
   it('loss falls with the stop edge, and is null before the first edge that can be kept [property]', () => {
     const edges = [0.59, 0.62, 0.65].map((edge) => edge * Math.PI);
-    const points = cascadeTradeOff(halfBand, OUTPUTS, ASK, edges);
+    const points = cascadeTradeOff(halfBand, OUTPUTS, (edge) => passbandMask(ASK, edge), edges);
     expect(points[0]!.insertionLossDb).toBeNull();
     expect(points[0]!.cascade.worstMarginDb).toBeLessThan(0);
     expect(points[1]!.insertionLossDb!).toBeGreaterThan(points[2]!.insertionLossDb!);
