@@ -18,7 +18,7 @@ function refuseInverted(band: Band, index: number): void {
   if (band.minTransmissionDb === undefined || (band.maxTransmissionDb ?? 0) >= band.minTransmissionDb) return;
   throw new Refusal({
     code: 'SPECIFICATION_INVALID',
-    detail: `A contradiction: ${nameOf(band)} asks for at least ${band.minTransmissionDb} dB and at most ${band.maxTransmissionDb} dB.`,
+    detail: `A contradiction: ${nameOf(band, index)} asks for at least ${band.minTransmissionDb} dB and at most ${band.maxTransmissionDb} dB.`,
     pointer: `/specification/mask/bands/${index}/maxTransmissionDb`,
     given: band.maxTransmissionDb,
     allowed: { min: band.minTransmissionDb, max: 0, unit: 'dB' },
@@ -39,15 +39,15 @@ function refuseCollision(bands: readonly Band[], i: number, j: number, fsrGhz: n
       code: 'BANDS_COLLIDE',
       limit: 'FREE_SPECTRAL_RANGE',
       detail:
-        `Contrary demands meet: ${nameOf(passing)} asks for at least ${passing.minTransmissionDb} dB and ${nameOf(other)} for at most ` +
+        `Contrary demands meet: ${nameOf(passing, i)} asks for at least ${passing.minTransmissionDb} dB and ${nameOf(other, j)} for at most ` +
         `${other.maxTransmissionDb} dB, and both fall on ${place}: the response repeats every free spectral range, so ` +
         'no filter on this chip can tell them apart.',
       pointer: `/specification/mask/bands/${j}`,
-      given: { bands: [nameOf(passing), nameOf(other)], commonOffsetGhz: offset },
+      given: { bands: [i, j], commonOffsetGhz: offset },
       allowed: 'bands whose positions, taken modulo the free spectral range, do not meet',
       nearest: [
         {
-          reason: `without ${nameOf(other)}`,
+          reason: `without ${nameOf(other, j)}`,
           changes: [{ pointer: `/specification/mask/bands/${j}`, given: other, works: null }],
         },
       ],
@@ -65,23 +65,21 @@ function refuseTogether(a: Band, i: number, b: Band, j: number, place: string): 
     code: 'SPECIFICATION_UNREACHABLE',
     limit: 'PASSIVITY',
     detail:
-      `More light is asked for than there is: ${nameOf(a)} and ${nameOf(b)} both fall on ${place} and together ask for ${(share * 100).toFixed(1)} % of the ` +
+      `More light is asked for than there is: ${nameOf(a, i)} and ${nameOf(b, j)} both fall on ${place} and together ask for ${(share * 100).toFixed(1)} % of the ` +
       'light that was sent in; a passive chip has 100 %.',
     pointer: `/specification/mask/bands/${j}/minTransmissionDb`,
     given: b.minTransmissionDb,
     allowed: 'least transmissions of the two outputs that sum to 1 at the most',
     nearest: [
       {
-        reason: `without ${nameOf(b)}`,
+        reason: `without ${nameOf(b, j)}`,
         changes: [{ pointer: `/specification/mask/bands/${j}`, given: b, works: null }],
       },
     ],
   });
 }
 
-/** By its label, else by where it lies: positions in a list differ between what was sent and its canonical form. */
-function nameOf({ label, lowGhz, highGhz, output }: Band): string {
-  const ghz = (offset: number): string => `${Number(offset.toPrecision(9))}`;
-  const where = lowGhz === highGhz ? `${ghz(lowGhz)} GHz` : `${ghz(lowGhz)} to ${ghz(highGhz)} GHz`;
-  return label === undefined ? `the band at ${where} on ${output}` : `"${label}"`;
+/** Positions are those of the canonical list; whoever shows the text puts the asker's own in their place. */
+function nameOf(band: Band, index: number): string {
+  return band.label === undefined ? `band ${index}` : `"${band.label}" (band ${index})`;
 }
