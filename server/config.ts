@@ -100,7 +100,7 @@ const VARIABLES = {
   ),
   RINGBINDER_POOL_SIZE: variable(
     wholeNumber(5, 500),
-    'Connections to PostgreSQL that one process keeps.',
+    'Connections to PostgreSQL that one process keeps at most, and as many again for its worker.',
     '20',
   ),
   RINGBINDER_QUEUE_LIMIT: variable(

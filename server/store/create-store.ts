@@ -72,6 +72,7 @@ export interface StoreOptions {
 type Operations = Omit<Store, 'notifications' | 'pool' | 'ping' | 'close'>;
 
 function operationsOf(database: Database, systemId: string): Operations {
+  const work: Database = { ...database, pool: database.workPool };
   return {
     findToken: findToken(database),
     findTokenById: findTokenById(database),
@@ -103,10 +104,10 @@ function operationsOf(database: Database, systemId: string): Operations {
     listRequests: listRequests(database),
     cancelRequest: cancelRequest(database),
 
-    startComputation: startComputation(database),
-    reportProgress: reportProgress(database),
-    finishComputation: finishComputation(database, systemId),
-    refuseComputation: refuseComputation(database, systemId),
+    startComputation: startComputation(work),
+    reportProgress: reportProgress(work),
+    finishComputation: finishComputation(work, systemId),
+    refuseComputation: refuseComputation(work, systemId),
     registerWorker: registerWorker(database),
     sweep: sweep(database, systemId),
     queueDepth: queueDepth(database),
@@ -146,7 +147,7 @@ export async function createStore(options: StoreOptions): Promise<Store> {
   const database = openDatabase(options.databaseUrl, options.poolSize ?? POOL_SIZE, logger);
   const closeDatabase = async (): Promise<void> => {
     await database.prisma.$disconnect();
-    if (!database.pool.ended) await database.pool.end();
+    for (const pool of [database.pool, database.workPool]) if (!pool.ended) await pool.end();
   };
   try {
     const applied = await migrate(options.databaseUrl);
@@ -157,7 +158,7 @@ export async function createStore(options: StoreOptions): Promise<Store> {
     return {
       ...guarded(operationsOf(database, systemId)),
       notifications,
-      pool: database.pool,
+      pool: database.workPool,
       async ping() {
         return database.pool.query('select 1').then(
           () => true,

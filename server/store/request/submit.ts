@@ -34,7 +34,7 @@ interface Attached {
   created: boolean;
 }
 
-async function lookUp(on: Database['pool'] | Transaction, key: string): Promise<Known | null> {
+async function lookUp(on: Transaction, key: string): Promise<Known | null> {
   const design = await readDesign(on, key);
   if (design) return { answer: { outcome: 'DESIGN', design }, row: { state: 'DONE', designId: key } };
   const problem = await readRefusal(on, key);
@@ -128,12 +128,9 @@ async function write(
 
 export const submitRequest =
   (database: Database): Designs['submitRequest'] =>
-  async (by, ask, limits, idempotency) => {
-    if (!idempotency) {
-      const known = await lookUp(database.pool, ask.key);
-      if (known) return known.answer;
-    }
-    return inTransaction<Submitted>(database, async (tx, undo) => {
+  (by, ask, limits, idempotency) =>
+    // Whoever calls has looked for the answer already; it is looked for again where that counts.
+    inTransaction<Submitted>(database, async (tx, undo) => {
       const claim = await claimKey(tx, by, idempotency);
       if (claim.kind === 'REUSED') return undo({ outcome: 'KEY_REUSED' });
       if (claim.kind === 'REPLAY') {
@@ -158,4 +155,3 @@ export const submitRequest =
       }
       return write(tx, by, ask, { state: computation.state, computationId: computation.id }, idempotency);
     });
-  };
