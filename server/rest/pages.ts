@@ -16,6 +16,26 @@ const PUBLIC_CACHE = 'public, max-age=300';
 const PAGE_POLICY =
   "default-src 'none'; style-src 'unsafe-inline'; frame-ancestors 'none'; base-uri 'none'; form-action 'none'";
 
+/**
+ * The reader's own scripts and this service, nobody else; it sets styles by itself. Not `upgrade-insecure-requests`, which
+ * the package would add: a lab without TLS would then see an empty page.
+ */
+const READER_POLICY = [
+  "default-src 'none'",
+  "script-src 'self'",
+  "style-src 'self' 'unsafe-inline'",
+  "img-src 'self' data:",
+  "font-src 'self' data:",
+  "connect-src 'self'",
+  "base-uri 'none'",
+  "form-action 'none'",
+  "frame-ancestors 'none'",
+].join('; ');
+
+/** A ring beside its bus waveguide. */
+const ICON =
+  '<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 16 16" fill="none" stroke="#0b3c6f" stroke-width="2"><circle cx="8" cy="6.5" r="4.5"/><path d="M1 14h14"/></svg>';
+
 const MARKDOWN = { suffix: 'md', mediaType: 'text/markdown' };
 const HTML = { suffix: 'html', mediaType: 'text/html' };
 
@@ -111,9 +131,18 @@ export function registerPages(app: FastifyInstance): void {
     });
     await scope.register(swaggerUi, {
       routePrefix: '/docs',
-      staticCSP: true,
-      uiConfig: { docExpansion: 'list', deepLinking: true, persistAuthorization: false },
-      theme: { title: 'Ringbinder: REST' },
+      staticCSP: READER_POLICY,
+      // No bar with an address to type: this page is for this service.
+      uiConfig: {
+        layout: 'BaseLayout',
+        docExpansion: 'list',
+        deepLinking: true,
+        persistAuthorization: false,
+      },
+      theme: {
+        title: 'Ringbinder: REST',
+        favicon: [{ filename: 'icon.svg', rel: 'icon', type: 'image/svg+xml', sizes: 'any', content: ICON }],
+      },
     });
   });
 }

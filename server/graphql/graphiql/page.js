@@ -14,10 +14,16 @@ query Chips {
     edges {
       node {
         serial
-        head { number model { referenceFrequencyThz fsrGhz } }
+        head {
+          number
+          model { referenceFrequencyThz fsrGhz }
+        }
         release {
           sequence createdAt
-          version { number stale configuration { name } }
+          version {
+            number stale
+            configuration { name }
+          }
         }
       }
     }
@@ -25,7 +31,7 @@ query Chips {
 }
 `,
     `# Would this be taken? Nothing is stored.
-# Give the serial of one of your chips under Variables.
+# Give a chip's serial under Variables.
 query Check($chip: String!) {
   checkSpecification(input: {
     chip: $chip
@@ -36,7 +42,10 @@ query Check($chip: String!) {
     } }
   }) {
     ok order rings designHash cached
-    problem { code detail pointer nearest { reason input } }
+    problem {
+      code detail pointer
+      nearest { reason input }
+    }
   }
 }
 `,
@@ -55,7 +64,8 @@ mutation Ask($chip: String!) {
   }
 }
 `,
-    `# The state now, then every change, until it has ended.
+    `# The state now, then every change,
+# until it has ended.
 subscription Watch($id: ID!) {
   designRequestChanged(id: $id) {
     state progress
@@ -66,7 +76,9 @@ subscription Watch($id: ID!) {
       setting {
         totalPowerMw
         cautions { code text }
-        channels { channel drives currentMa limitMa }
+        channels {
+          channel drives currentMa limitMa
+        }
       }
     }
   }
@@ -80,10 +92,13 @@ query Designs {
       node {
         id order architecture
         figures {
-          insertionLossDb rippleDb rejectionDb bandwidth3DbGhz
+          insertionLossDb rippleDb
+          rejectionDb bandwidth3DbGhz
           notDefined { figure reason }
         }
-        response(reduceTo: 200) { offsetGhz transmissionDb groupDelayPs }
+        response(reduceTo: 200) {
+          offsetGhz transmissionDb groupDelayPs
+        }
       }
     }
   }
@@ -108,7 +123,7 @@ query Designs {
 
   async function showViewer() {
     if (token === '') {
-      say('No token: ask with one, an administrator makes them.', 'none');
+      say('Paste your token here. An administrator makes them.', 'none');
       return;
     }
     const response = await fetch('/graphql', {
@@ -132,6 +147,8 @@ query Designs {
         // Another token may see another schema: start anew.
         key: token,
         fetcher,
+        // Without a token the schema is not shown: no use in asking for it.
+        ...(token === '' ? { schema: null } : {}),
         storage: window.sessionStorage,
         shouldPersistHeaders: false,
         isHeadersEditorEnabled: false,

@@ -110,8 +110,8 @@ describe('pages', () => {
     const page = await service.call('/docs', { token: null });
     expect([page.status, page.headers.get('content-type')]).toEqual([200, 'text/html; charset=utf-8']);
     const policy = page.headers.get('content-security-policy')!;
-    expect(policy).toMatch(/default-src 'self'/);
-    expect(policy).not.toMatch(/https?:\/\/|\*/);
+    expect(policy).toMatch(/default-src 'none'/);
+    expect(policy).not.toMatch(/https?:|upgrade-insecure-requests|unsafe-eval|\*/);
     const assets = [...page.text.matchAll(/(?:src|href)="([^"]+)"/g)].map((found) => found[1]!);
     expect(assets.length).toBeGreaterThan(3);
     for (const asset of assets) {
