@@ -4,6 +4,7 @@ import { createHash } from 'node:crypto';
 import type { FastifyInstance, FastifyRequest } from 'fastify';
 import { z } from 'zod';
 import { LIMITS } from '../../schema/limits.ts';
+import type { IntervalGhz } from '../../src/filter/index.ts';
 import { badInput, notFound, ProblemError, refuse } from '../errors.ts';
 import type { Curve } from '../operations/index.ts';
 import { groupDelayPlot, poleZeroPlot, transmissionPlot } from '../plots/index.ts';
@@ -112,6 +113,12 @@ function queryHash(ask: object): string {
   return createHash('sha256').update(JSON.stringify(ask)).digest('hex').slice(0, TAG_HASH_DIGITS);
 }
 
+/** The response repeats every FSR, and so do its bands. */
+function isWithin(offsetGhz: number, band: IntervalGhz, fsrGhz: number): boolean {
+  const turns = Math.ceil((band.lowGhz - offsetGhz) / fsrGhz);
+  return offsetGhz + turns * fsrGhz <= band.highGhz;
+}
+
 export function registerCurves(app: FastifyInstance, deps: RestDeps): void {
   const { operations } = deps;
 
@@ -208,7 +215,10 @@ export function registerCurves(app: FastifyInstance, deps: RestDeps): void {
     },
     'group-delay': async (request: FastifyRequest, design: DesignRecord) => {
       const { chip, revision, model } = await partsOf(request, design);
-      const { output } = design.result;
+      const { output, mask } = design.result;
+      const passbands = mask.bands.filter(
+        (band) => band.output === output && band.minTransmissionDb !== undefined,
+      );
       const curves = await Promise.all(
         (['SETTING', 'TARGET'] as const).map((stage) => curveOf(request, design, { stage, output })),
       );
@@ -221,6 +231,7 @@ export function registerCurves(app: FastifyInstance, deps: RestDeps): void {
           output: port,
           values: groupDelayPs,
         })),
+        passes: (offsetGhz) => passbands.some((band) => isWithin(offsetGhz, band, model.fsrGhz)),
       });
     },
     'pole-zero': async (request: FastifyRequest, design: DesignRecord) => {

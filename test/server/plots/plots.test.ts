@@ -60,6 +60,17 @@ describe('every plot', () => {
     expect(second).toEqual(first);
   });
 
+  it('has a delay axis for the passbands, however far the delay runs off beside a null', async () => {
+    const offsetGhz = grid(101);
+    const values = offsetGhz.map((offset) => (Math.abs(offset) < 2 ? -800 : 20));
+    const delay = { title: 'delay', offsetGhz, referenceFrequencyThz: 193.1, curves: [curve(values)] };
+    const whole = await groupDelayPlot(delay);
+    const passing = await groupDelayPlot({ ...delay, passes: (offset) => Math.abs(offset) > 5 });
+    expect(whole).toContain('>\u2212800<');
+    expect(passing).not.toContain('>\u2212800<');
+    expect(passing).toContain('>20<');
+  });
+
   it('refuses a curve that is not as long as its grid', async () => {
     const broken = plot({ curves: [curve([1, 2, 3])] });
     await expect(transmissionPlot(broken)).rejects.toThrow(RangeError);
