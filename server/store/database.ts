@@ -32,9 +32,10 @@ export interface Database {
 
 export type Transaction = pg.PoolClient;
 
-function openPool(url: string, poolSize: number, logger: StoreLogger): pg.Pool {
+function openPool(url: string, poolSize: number, logger: StoreLogger, options?: string): pg.Pool {
   const pool = new pg.Pool({
     ...connectionOf(url),
+    ...(options === undefined ? {} : { options }),
     max: poolSize,
     statement_timeout: STATEMENT_TIMEOUT_MS,
     query_timeout: ANSWER_TIMEOUT_MS,
@@ -49,11 +50,7 @@ function openPool(url: string, poolSize: number, logger: StoreLogger): pg.Pool {
 /** Connections are opened as they are needed: a process without a worker has none in its work pool. */
 export function openDatabase(url: string, poolSize: number, logger: StoreLogger): Database {
   const pool = openPool(url, poolSize, logger);
-  const workPool = openPool(url, poolSize, logger);
-  // A client answers in the order of its queries: this one comes before any of the pool's users.
-  workPool.on('connect', (client) => {
-    client.query('set synchronous_commit = off').catch(() => {});
-  });
+  const workPool = openPool(url, poolSize, logger, '-c synchronous_commit=off');
   return { url, pool, workPool, prisma: new PrismaClient({ adapter: new PrismaPg(pool) }), logger };
 }
 
