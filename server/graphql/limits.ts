@@ -13,7 +13,10 @@ export function tooExpensive(given: number, max: number, unit: string): ProblemE
 }
 
 export function tooDeep(given: number, max: number): ProblemError {
-  const detail = `The operation nests ${shown(given)} levels of fields; it may nest ${max}.`;
+  const nests = Number.isFinite(given)
+    ? `nests ${given} levels of fields`
+    : 'nests fields without end: its fragments hold each other';
+  const detail = `The operation ${nests}; it may nest ${max}.`;
   return refuse('QUERY_TOO_DEEP', detail, { given: shown(given), allowed: { max, unit: 'levels' } });
 }
 
