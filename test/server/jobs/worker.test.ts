@@ -183,6 +183,8 @@ describe('worker processes', () => {
        where datname = current_database() and pid <> pg_backend_pid()`,
     );
     client.release();
+    // Ours were cut too, and notice it at their next use.
+    await expect.poll(() => lab.store.ping()).toBe(true);
     expect((await lab.waitFor(request.id, isFinal)).state).toBe('DONE');
     // It registered again: when it is killed now, another still learns of it.
     const next = await lab.askNew();
