@@ -19,8 +19,8 @@ export const LIMITS = {
   gridPoints: 20_001,
   /** Bands of a mask. */
   bands: 64,
-  /** Filter order: the core is exact to 16; a few more leave room for refusing with a reason. */
-  order: 64,
+  /** Filter order; the core is checked to it against published designs. */
+  order: 16,
   /** Entries of a list page. */
   pageSize: 200,
   defaultPageSize: 50,
