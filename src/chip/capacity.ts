@@ -1,5 +1,5 @@
 /** How much filter a chip can hold, by counting its rings: quick refusals before anything is synthesised. */
-import { compensatingRings } from './arms.ts';
+import { compensatingRings, REACH_SLACK } from './arms.ts';
 import { ringCount } from './elements.ts';
 import type { ChipModel } from './model.ts';
 import { delayOf, type Run, slotsOf } from './run.ts';
@@ -39,7 +39,7 @@ function holds(
     const full = compensatingRings(here, delayOf(chip, run), ringDelay);
     if (full === null) return false;
     return ([0, 1] as const).every((arm) => {
-      const reachFull = slots[arm].filter((slot) => slot.coupler.maxCoupling >= 1).length;
+      const reachFull = slots[arm].filter((slot) => slot.coupler.maxCoupling >= 1 - REACH_SLACK).length;
       const wanted = rings[arm === 0 ? swap : ((1 - swap) as 0 | 1)];
       return full[arm] <= reachFull && wanted + full[arm] <= slots[arm].length;
     });

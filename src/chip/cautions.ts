@@ -1,5 +1,6 @@
 /** What a person should know before a setting goes to the driver. */
 import type { ChipModel } from './model.ts';
+import { offBalanceCautions } from './off-balance.ts';
 import type { PlacedCircuit } from './placed.ts';
 import type { Caution, ChannelSetting } from './setting.ts';
 
@@ -79,6 +80,7 @@ export function cautionsOf(input: CautionInput): Caution[] {
     LASER,
     ...heat(input.chip, input.totalPowerMw),
     ...nearLimits(input.channels),
+    ...offBalanceCautions(input.placed, input.chip),
     ...(depthDb > POOR_NULL_DB
       ? [
           {

@@ -42,14 +42,14 @@ function placePair(
   run: Run,
   section: number | null,
 ): PlannedCells {
-  const { output, parkAtRad, carriedOn = output } = options;
+  const { output, parkAtRad, carriedOn = output, bothOutputs = false } = options;
   const joined = chip.join === 'BOTH';
   const port = portOf(chip, run.last, output);
   const pass = (index: number) => {
     if (joined) return planTwoGuides(chip, index, index < run.first ? 'FIRST' : 'BOTH', parkAtRad);
     return planPassThrough(chip, index, portOf(chip, index, output), parkAtRad);
   };
-  const middle = planRun(chip, run, { ideal, carriedOn, port, section, parkAtRad });
+  const middle = planRun(chip, run, { ideal, carriedOn, port, section, parkAtRad, bothOutputs });
   const before = Array.from({ length: run.first }, (_, index) => pass(index));
   const after = chip.cells.slice(run.last + 1).map((_, k) => pass(run.last + 1 + k));
   return together([...before, middle, ...after]);
@@ -70,8 +70,9 @@ function fitPair(
 
 /**
  * Places a lossless ideal circuit on a chip. The placed circuit has the ideal response on `output`, up to a constant phase
- * and a whole delay, except for what `parked` says of rings that cannot decouple. The order of sections is kept where it
- * fits, and changed where only that fits.
+ * and a whole delay, except for what `parked` says of rings that cannot decouple and `offBalance` of input and output
+ * couplers that cannot be what the ideal wants. The order of sections is kept where it fits, and changed where only that
+ * fits, or fits exactly.
  *
  * Throws a Refusal with limit RINGS (counts and delays) or COUPLING_RANGE (element, given, allowed).
  */

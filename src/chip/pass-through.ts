@@ -1,6 +1,7 @@
 /** Cells that a design does not use: light goes through them as if they were a guide, as nearly as their couplers allow. */
 import type { OutputPort } from '../filter/specification.ts';
 import { parkRings, REACH_SLACK, type Slot, withinReach } from './arms.ts';
+import { LARGEST_OFF_BALANCE } from './balance.ts';
 import { couplerOf, ringCount } from './elements.ts';
 import type { ChipModel, Coupler } from './model.ts';
 import type { CellPlan, RingPlan } from './placed.ts';
@@ -8,7 +9,10 @@ import { outOfReach } from './refusals.ts';
 import { type PlannedCells, slotsOf } from './run.ts';
 import type { Parked } from './setting.ts';
 
-/** Σ of couplings off their route beyond which a cell does not count as passed through (0.2 dB a coupler). */
+/**
+ * Σ of couplings off their route beyond which a cell does not count as passed through (0.2 dB a coupler). Two equal fields
+ * are less particular: there a miss of both couplers by `LARGEST_OFF_BALANCE` loses 0.8 dB.
+ */
 const LARGEST_LEAK = 0.1;
 
 interface Route {
@@ -24,7 +28,7 @@ const clamp = (coupler: Coupler, value: number): number =>
 
 /**
  * Through both arms with equal fields: to OUT2 with K_out = 1−K_in, to OUT1 with K_out = K_in and arm phase π. The only way
- * with fixed couplers of 0.5. Null where the couplers' reaches do not meet, or the arms' delays differ.
+ * with fixed couplers of 0.5. Null where the arms' delays differ.
  */
 function balancedRoute(chip: ChipModel, index: number, port: OutputPort): Route | null {
   const cell = chip.cells[index]!;
@@ -33,8 +37,8 @@ function balancedRoute(chip: ChipModel, index: number, port: OutputPort): Route 
   const mirrored = port === 'OUT2';
   const low = Math.max(input.minCoupling, mirrored ? 1 - output.maxCoupling : output.minCoupling);
   const high = Math.min(input.maxCoupling, mirrored ? 1 - output.minCoupling : output.maxCoupling);
-  if (low > high + REACH_SLACK) return null;
-  const inputCoupling = Math.min(high, Math.max(low, 0.5));
+  // Reaches that do not meet share what is missing: each coupler stays at its end, as near to the other as it comes.
+  const inputCoupling = low > high ? (low + high) / 2 : Math.min(high, Math.max(low, 0.5));
   return {
     inputCoupling,
     outputCoupling: mirrored ? 1 - inputCoupling : inputCoupling,
@@ -85,8 +89,8 @@ function planRoute(
   const unlit = darkRings(dark);
   const plans = new Map([...rings.plans, ...unlit.plans]);
   const way = route.arm === null ? 'both arms' : route.arm === 0 ? 'arm 0' : 'arm 1';
-  const goesTo = (['OUT1', 'OUT2'] as const).filter((port) => carries[port] === 'PASSED_ON').join(' and ');
-  const how = `passed through to ${goesTo} by ${way} (input K ${inputCoupling}, output K ${outputCoupling})`;
+  const goesTo = (['OUT1', 'OUT2'] as const).filter((port) => carries[port] === 'PASSED_ON');
+  const how = `passed through to ${goesTo.join(' and ')} by ${way} (input K ${inputCoupling}, output K ${outputCoupling})`;
   const plan: CellPlan = {
     section: null,
     inputCoupling,
@@ -96,7 +100,15 @@ function planRoute(
     carries,
     parked: [{ element: cell.name, how }, ...rings.parked, ...unlit.parked],
   };
-  return { plans: [plan], leak: offRoute + rings.leak, delayRings: 0 };
+  const couplersOff = route.arm === null && offRoute > REACH_SLACK ? offRoute : 0;
+  const offBalance = { first: index, last: index, wanted: route, port: goesTo[0]!, passes: true };
+  return {
+    plans: [couplersOff > 0 ? { ...plan, offBalance } : plan],
+    leak: offRoute + rings.leak,
+    delayRings: 0,
+    couplersOff,
+    nullField: 0,
+  };
 }
 
 /** An unused cell set to pass the light of in1 to `port`, by its cleanest route; refused where none comes near. */
@@ -107,11 +119,13 @@ export function planPassThrough(
   parkAtRad: number,
 ): PlannedCells {
   const carries = { OUT1: 'NOTHING', OUT2: 'NOTHING', [port]: 'PASSED_ON' } as CellPlan['carries'];
-  const planned = routesTo(chip, index, port).map((route) =>
-    planRoute(chip, index, route, carries, parkAtRad),
-  );
-  const best = planned.reduce((a, b) => (b.leak < a.leak - REACH_SLACK ? b : a));
-  if (best.leak <= LARGEST_LEAK) return best;
+  const passable = routesTo(chip, index, port)
+    .map((route) => planRoute(chip, index, route, carries, parkAtRad))
+    .filter(
+      ({ leak, couplersOff }) =>
+        couplersOff <= 2 * LARGEST_OFF_BALANCE + REACH_SLACK && leak - couplersOff <= LARGEST_LEAK,
+    );
+  if (passable.length > 0) return passable.reduce((a, b) => (b.leak < a.leak - REACH_SLACK ? b : a));
   const cell = chip.cells[index]!;
   const output = couplerOf(cell, 'output');
   const wanted = port === 'OUT2' ? 1 : 0;
@@ -143,5 +157,5 @@ export function planTwoGuides(
     carries,
     parked: [{ element: cell.name, how: 'both guides passed on (input and output K 0)' }, ...rings.parked],
   };
-  return { plans: [plan], leak: rings.leak, delayRings: 0 };
+  return { plans: [plan], leak: rings.leak, delayRings: 0, couplersOff: 0, nullField: 0 };
 }

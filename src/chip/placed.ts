@@ -32,11 +32,26 @@ export interface PlacedCell {
   readonly carries: Readonly<Record<OutputPort, Carried>>;
 }
 
+export type EndCouplings = Pick<InterferometerParameters, 'inputCoupling' | 'outputCoupling'>;
+
+/** An interferometer from the input coupler of cell `first` to the output coupler of cell `last` that is not as wanted. */
+export interface OffBalance {
+  readonly first: number;
+  readonly last: number;
+  readonly wanted: EndCouplings;
+  /** The output by which filter, section or passed light leaves. */
+  readonly port: OutputPort;
+  /** It only passes the light on. */
+  readonly passes: boolean;
+}
+
 export interface PlacedCircuit {
   readonly cells: readonly PlacedCell[];
   /** Lossless, in chip order, rings in the chip's order, parked ones included. */
   readonly circuit: CircuitParameters;
   readonly parked: readonly Parked[];
+  /** Interferometers whose input or output coupler could not be placed as wanted. */
+  readonly offBalance: readonly OffBalance[];
 }
 
 /** What the planning of one cell decides. */
@@ -48,6 +63,8 @@ export interface CellPlan {
   readonly rings: readonly RingPlan[];
   readonly carries: Readonly<Record<OutputPort, Carried>>;
   readonly parked: readonly Parked[];
+  /** On the last cell of an interferometer whose ends are not as wanted. */
+  readonly offBalance?: OffBalance;
 }
 
 export interface RingPlan {
@@ -90,6 +107,7 @@ export function assemble(chip: ChipModel, plans: readonly CellPlan[]): PlacedCir
     }),
     circuit: { cells: plans.map((plan, index) => cellCircuit(chip, index, plan)), join },
     parked: plans.flatMap((plan) => plan.parked),
+    offBalance: plans.flatMap((plan) => plan.offBalance ?? []),
   };
 }
 

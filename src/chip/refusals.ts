@@ -6,15 +6,27 @@ export function tooFewRings(detail: string, given: unknown, allowed: unknown): R
   return new Refusal({ code: 'SPECIFICATION_UNREACHABLE', limit: 'RINGS', detail, given, allowed });
 }
 
-/** `element` is a path such as `cell1.ring2.coupling`. The nearest value within reach is in the text. */
-export function outOfReach(element: string, powerCrossCoupling: number, coupler: Coupler): Refusal {
+/**
+ * `element` is a path such as `cell1.ring2.coupling`. The nearest value within reach is in the text, and by how much this
+ * kind of coupler may miss what is wanted, where it may.
+ */
+export function outOfReach(
+  element: string,
+  powerCrossCoupling: number,
+  coupler: Coupler,
+  allowedMiss = 0,
+): Refusal {
   const { minCoupling: min, maxCoupling: max } = coupler;
   const nearest = Math.min(max, Math.max(min, powerCrossCoupling));
   const reach = coupler.tunable ? `reaches ${min} to ${max}` : `is fixed at ${min}`;
+  const beyond =
+    allowedMiss > 0
+      ? ` A miss of up to ${allowedMiss} would be taken, and its effect on the nulls told.`
+      : '';
   return new Refusal({
     code: 'SPECIFICATION_UNREACHABLE',
     limit: 'COUPLING_RANGE',
-    detail: `${element} would have to be ${powerCrossCoupling.toPrecision(6)}; it ${reach}, nearest ${nearest}.`,
+    detail: `${element} would have to be ${powerCrossCoupling.toPrecision(6)}; it ${reach}, nearest ${nearest}.${beyond}`,
     element,
     given: powerCrossCoupling,
     allowed: { min, max },

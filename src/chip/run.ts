@@ -11,6 +11,7 @@ import {
   type Slot,
   withinReach,
 } from './arms.ts';
+import { type TakenEnds, takeEnds } from './balance.ts';
 import { armOfRing, couplerOf, ringCount } from './elements.ts';
 import { powerPerTurn } from './lossy.ts';
 import type { ChipModel } from './model.ts';
@@ -31,6 +32,8 @@ export interface RunRequest {
   /** Number of the section, null for an all-pass pair. */
   readonly section: number | null;
   readonly parkAtRad: number;
+  /** What leaves by the other output is used too. */
+  readonly bothOutputs: boolean;
 }
 
 export interface PlannedCells {
@@ -39,6 +42,10 @@ export interface PlannedCells {
   readonly leak: number;
   /** Rings used only as delay: each costs a turn of loss. */
   readonly delayRings: number;
+  /** Σ|K − wanted| of input and output couplers: 0 is exact. */
+  readonly couplersOff: number;
+  /** Σ of the fields that such couplers leave in nulls of the outputs in use. */
+  readonly nullField: number;
 }
 
 export function slotsOf(chip: ChipModel, run: Run): readonly [readonly Slot[], readonly Slot[]] {
@@ -132,6 +139,20 @@ function commonRingDelay(chip: ChipModel, run: Run, rings: readonly RingParamete
   return ringDelay;
 }
 
+function endsOf(chip: ChipModel, run: Run, request: RunRequest, variant: Variant): TakenEnds {
+  const [first, last] = [chip.cells[run.first]!, chip.cells[run.last]!];
+  const { inputCoupling, outputCoupling } = variant;
+  return takeEnds({
+    inputPath: `${first.name}.input.coupling`,
+    outputPath: `${last.name}.output.coupling`,
+    input: couplerOf(first, 'input'),
+    output: couplerOf(last, 'output'),
+    wanted: { inputCoupling, outputCoupling },
+    port: request.port,
+    bothOutputs: request.bothOutputs,
+  });
+}
+
 function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Variant): PlannedCells {
   const { arms } = variant;
   const ringDelay = commonRingDelay(chip, run, [...arms[0].rings, ...arms[1].rings]);
@@ -141,12 +162,21 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
   const rings = placeRings(slots, [arms[0].rings, arms[1].rings], full, remaining, request.parkAtRad);
   const armPhaseRad = variant.armPhaseRad + Math.PI * (full[0] - full[1]);
   const allSlots = [...slots[0], ...slots[1]];
+  const taken = endsOf(chip, run, request, variant);
+  const { couplersOff, nullField } = taken;
+  const { inputCoupling, outputCoupling } = variant;
+  const offBalance = {
+    ...run,
+    wanted: { inputCoupling, outputCoupling },
+    port: request.port,
+    passes: false,
+  };
   const plans: CellPlan[] = [];
   for (let index = run.first; index <= run.last; index++) {
     const cell = chip.cells[index]!;
     const ends = index === run.last;
-    const reach = (element: 'input' | 'output', value: number) =>
-      withinReach(`${cell.name}.${element}.coupling`, couplerOf(cell, element), value);
+    const dark = (element: 'input' | 'output') =>
+      withinReach(`${cell.name}.${element}.coupling`, couplerOf(cell, element), 0);
     const carries = {
       OUT1: 'COMPLEMENT',
       OUT2: 'COMPLEMENT',
@@ -154,8 +184,8 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
     } as CellPlan['carries'];
     plans.push({
       section: request.section,
-      inputCoupling: reach('input', index === run.first ? variant.inputCoupling : 0),
-      outputCoupling: reach('output', ends ? variant.outputCoupling : 0),
+      inputCoupling: index === run.first ? taken.inputCoupling : dark('input'),
+      outputCoupling: ends ? taken.outputCoupling : dark('output'),
       armPhaseRad: ends ? armPhaseRad : 0,
       rings: allSlots
         .filter((slot) => slot.cell === index)
@@ -163,13 +193,24 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
         .map((slot) => rings.plans.get(slot)!),
       carries: ends ? carries : { OUT1: 'ARM', OUT2: 'ARM' },
       parked: rings.parked.filter(({ element }) => element.startsWith(`${cell.name}.`)),
+      ...(ends && couplersOff > 0 ? { offBalance } : {}),
     });
   }
-  return { plans, leak: rings.leak, delayRings: full[0] + full[1] };
+  return { plans, leak: rings.leak, delayRings: full[0] + full[1], couplersOff, nullField };
 }
 
+/** Exact couplers first, then nulls that are left whole, then what parked rings spoil, then loss. */
 export function isCleaner(a: PlannedCells, b: PlannedCells): boolean {
-  return Math.abs(a.leak - b.leak) > REACH_SLACK ? a.leak < b.leak : a.delayRings < b.delayRings;
+  const costs = (planned: PlannedCells) => [
+    planned.couplersOff > 0 ? 1 : 0,
+    planned.nullField,
+    planned.leak,
+    planned.couplersOff,
+    planned.delayRings,
+  ];
+  const [mine, other] = [costs(a), costs(b)];
+  const k = mine.findIndex((cost, index) => Math.abs(cost - other[index]!) > REACH_SLACK);
+  return k >= 0 && mine[k]! < other[k]!;
 }
 
 /** The cleanest way to realise the ideal on these cells, or the refusal that came furthest. */

@@ -27,6 +27,8 @@ export function together(parts: readonly PlannedCells[]): PlannedCells {
     plans: parts.flatMap((part) => part.plans),
     leak: parts.reduce((sum, part) => sum + part.leak, 0),
     delayRings: parts.reduce((sum, part) => sum + part.delayRings, 0),
+    couplersOff: parts.reduce((sum, part) => sum + part.couplersOff, 0),
+    nullField: parts.reduce((sum, part) => sum + part.nullField, 0),
   };
 }
 
@@ -69,7 +71,8 @@ function placeInOrder(sections: readonly Section[], chip: ChipModel, request: Ca
     if (!section) return pass();
     const { ideal, number } = section;
     const run = { first: index, last: index };
-    const take = () => planRun(chip, run, { ideal, carriedOn, port, section: number, parkAtRad });
+    const take = () =>
+      planRun(chip, run, { ideal, carriedOn, port, section: number, parkAtRad, bothOutputs: false });
     return cleanest([() => together([take(), from(index + 1, next + 1)]), pass]);
   };
   const from = (index: number, next: number): PlannedCells => {
@@ -97,7 +100,10 @@ function* permutations<T>(items: readonly T[]): Generator<readonly T[]> {
       for (const rest of permutations(items.filter((_, j) => j !== k))) yield [item, ...rest];
 }
 
-/** The order given where it fits, any other where only that does: passive sections may follow one another in any order. */
+/**
+ * The order given where it fits with exact couplers, any other where only that does: passive sections may follow one
+ * another in any order. Where no order has exact couplers, the cleanest.
+ */
 export function fitSections(
   cells: readonly InterferometerParameters[],
   chip: ChipModel,
@@ -105,14 +111,18 @@ export function fitSections(
 ): PlannedCells {
   const sections = cells.map((ideal, k) => ({ ideal, number: k + 1 }));
   const refusals: Refusal[] = [];
+  let best: PlannedCells | null = null;
   const orders = sections.length <= MOST_SECTIONS_TO_PERMUTE ? permutations(sections) : [sections];
   for (const order of orders) {
     try {
-      return placeInOrder(order, chip, request);
+      const planned = placeInOrder(order, chip, request);
+      if (planned.couplersOff === 0) return planned;
+      if (best === null || isCleaner(planned, best)) best = planned;
     } catch (reason) {
       if (!(reason instanceof Refusal)) throw reason;
       refusals.push(reason);
     }
   }
+  if (best !== null) return best;
   throw furthest(refusals);
 }

@@ -137,13 +137,9 @@ describe('all-pass pair on one cell', () => {
     });
   });
 
-  it('realises fixed couplers at their own value only [cross-check]', () => {
+  it('realises fixed couplers at their own value [cross-check]', () => {
     const ends = [fixed('input', 0.5), fixed('output', 0.5)];
     expectAlike(interferometer([ring(0.6, 0.4)], [ring(0.5, 2)]), oneCell({ couplers: ends }), OUT1);
-    const off = [fixed('input', 0.48), fixed('output', 0.5)];
-    expect(
-      refusal(() => fitToChip(pair(interferometer([ring(0.6, 0.4)], [])), oneCell({ couplers: off }), OUT1)),
-    ).toMatchObject({ element: 'cell1.input.coupling', given: 0.5, allowed: { min: 0.48, max: 0.48 } });
   });
 
   it('refuses a ring that the loss of the chip undercouples [cross-check]', () => {

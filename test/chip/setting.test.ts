@@ -468,6 +468,7 @@ function anyPlaced(chip: ChipModel, seed: number): PlacedCircuit {
   return {
     circuit: { cells, join: chip.join },
     parked: [],
+    offBalance: [],
     cells: chip.cells.map((cell, index) => ({
       cell: cell.name,
       section: null,

@@ -93,7 +93,7 @@ describe('a filter that the chip cannot be made into', () => {
   });
 
   it('[property] is refused without a suggestion where none of those tried fits', () => {
-    const couplers = ['input', 'output'].map((name) => fixed(name, 0.53));
+    const couplers = ['input', 'output'].map((name) => fixed(name, 0.75));
     const chip = oneCell({ cells: [{ name: 'c1', ringsPerArm: [2, 2], couplers }] });
     expect(refusalOf(family(), chip).nearest).toEqual([]);
   });
