@@ -171,8 +171,9 @@ export const PROBLEM_TABLE: Readonly<Record<ProblemCode, ProblemKind>> = {
   },
   COMPUTATION_CRASHED: {
     status: 500,
-    title: 'The computation failed several times',
-    about: 'The worker died or a step did not converge at every attempt. Asking again starts anew.',
+    title: 'The computation failed',
+    about:
+      'The worker died at every attempt, or an iteration did not converge: `detail` says which of them. It is a defect and no refusal; asking again starts anew.',
   },
   COMPUTATION_TIMED_OUT: {
     status: 500,

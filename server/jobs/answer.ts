@@ -13,7 +13,9 @@ export interface ThreadTask {
   readonly port: MessagePort;
 }
 
-/** An `Error` loses its class on the way out of a thread; a refusal therefore leaves as a value. */
+/** An `Error` loses its class on the way out of a thread; what the core throws on purpose therefore leaves as a value. */
 export type ThreadAnswer =
   | { readonly outcome: 'DESIGN'; readonly design: Design; readonly resultHash: string }
-  | { readonly outcome: 'REFUSED'; readonly details: RefusalDetails };
+  | { readonly outcome: 'REFUSED'; readonly details: RefusalDetails }
+  /** `detail`: which iteration, after how many steps, how far off. */
+  | { readonly outcome: 'NOT_CONVERGED'; readonly detail: string };

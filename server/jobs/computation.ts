@@ -5,7 +5,9 @@
  *     │
  *   compute in a thread ──▶ design ──▶ finish ──true──▶ return
  *     │                 └─▶ refusal ─▶ refuse ──true──▶ return (kept by address, never retried)
- *     │                                   └──false──▶ throw SupersededError
+ *     │                 │                 └──false──▶ throw SupersededError
+ *     │                 └─▶ no convergence ─▶ refuse with COMPUTATION_CRASHED, as above, but not kept by address:
+ *     │                     the core is deterministic, a second try ends the same, and the next engine may do better
  *     ├─ CANCEL event ───────▶ thread ended, return (the queue's job is gone already)
  *     ├─ deadline ───────────▶ thread ended, refused with COMPUTATION_TIMED_OUT, return
  *     ├─ shutdown ───────────▶ thread ended, throw (the queue gives the job to others)
@@ -168,5 +170,10 @@ function store(
   }
   if (answer.outcome === 'REFUSED')
     return deps.store.refuseComputation(id, attempt, problemOfRefusal(answer.details));
+  if (answer.outcome === 'NOT_CONVERGED') {
+    deps.logger.error({ computation: id, attempt, detail: answer.detail }, 'an iteration did not converge');
+    const detail = `An iteration of the computation reached its limit: ${answer.detail}. It was not the specification that was refused; the same request will end the same way, a changed one may not. Tell the operator.`;
+    return deps.store.refuseComputation(id, attempt, problemOf('COMPUTATION_CRASHED', detail));
+  }
   return deps.store.finishComputation(id, attempt, answer.design, answer.resultHash);
 }

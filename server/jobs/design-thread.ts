@@ -1,9 +1,9 @@
-/** Runs inside a worker thread: the question and the chip in, the design or the refusal out. */
+/** Runs inside a worker thread: the question and the chip in, the design or why there is none out. */
 import { createHash } from 'node:crypto';
 import { chipModelOf } from '../../schema/chip.ts';
 import { canonicalJson } from '../../schema/jcs.ts';
 import { computeDesign, type DesignQuestion } from '../../src/design/index.ts';
-import { Refusal } from '../../src/errors.ts';
+import { NoConvergence, Refusal } from '../../src/errors.ts';
 import type { ThreadAnswer, ThreadTask } from './answer.ts';
 
 /** Loading this file is all that warming takes: the thread has then compiled the core. */
@@ -23,6 +23,7 @@ export function design({ canonical, model, port }: ThreadTask): ThreadAnswer {
     return { outcome: 'DESIGN', design: result, resultHash: resultHashOf(result) };
   } catch (error) {
     if (error instanceof Refusal) return { outcome: 'REFUSED', details: error.details };
+    if (error instanceof NoConvergence) return { outcome: 'NOT_CONVERGED', detail: error.message };
     throw error;
   }
 }

@@ -1,10 +1,19 @@
 // The real computation, held up first: long enough to kill its process, cancel it or let it time out. How long, the
-// environment says; a mask band labelled "crash" ends the thread instead.
+// environment says; a mask band labelled "crash" ends the thread instead, one labelled "endless" lets the core's first
+// progress report throw what an iteration throws at its cap.
 import { register } from 'tsx/esm/api';
 
 register();
 const real = await import('../../../server/jobs/design-thread.ts');
+const { NoConvergence } = await import('../../../src/errors.ts');
 const SLICE_MS = 20;
+
+/** Throws from within the core, as an iteration of its own would. */
+const notConverging = {
+  postMessage() {
+    throw new NoConvergence('invented iteration', 40, 0.125);
+  },
+};
 
 export const warm = real.warm;
 
@@ -16,5 +25,6 @@ export function design(task) {
     task.port.postMessage((0.9 * slice) / slices);
   }
   if (task.canonical.includes('"label":"crash"')) process.exit(3);
-  return real.design(task);
+  const isEndless = task.canonical.includes('"label":"endless"');
+  return real.design(isEndless ? { ...task, port: notConverging } : task);
 }

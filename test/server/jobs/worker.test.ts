@@ -162,6 +162,28 @@ describe('worker processes', () => {
     await expect.poll(jobsLeft).toBe(0);
   });
 
+  it('end at the first attempt what does not converge, say what it was, and do not keep that as the answer', async () => {
+    const worker = await start();
+    const askedAt = Date.now();
+    const request = await lab.askNew('endless');
+    const failed = await lab.waitFor(request.id, isFinal);
+    // A second attempt would come a second or more after the first: the queue waits exp(attempts) s.
+    expect(Date.now() - askedAt).toBeLessThan(2_000);
+    expect(failed).toMatchObject({ state: 'FAILED', problem: { code: 'COMPUTATION_CRASHED' } });
+    expect(failed.problem?.detail).toMatch(
+      /invented iteration did not converge in 40 iterations \(residual 1\.25e-1\)/,
+    );
+    expect(await attemptsOf(request.computationId)).toBe(1);
+    expect(await lab.store.findRefusal(request.key)).toBeNull();
+    await expect.poll(jobsLeft).toBe(0);
+    expect(worker.log().match(/computation ended/g)).toHaveLength(1);
+    // Asked again, it is computed again, by the same worker.
+    const again = await lab.waitFor((await lab.askNew('endless')).id, isFinal);
+    expect(again.state).toBe('FAILED');
+    expect(again.computationId).not.toBe(request.computationId);
+    expect((await lab.waitFor((await lab.askNew()).id, isFinal)).state).toBe('DONE');
+  });
+
   it('try a computation that brings its thread down three times, survive it, and then say so', async () => {
     const worker = await start();
     const request = await lab.askNew('crash');
