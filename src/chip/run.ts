@@ -139,18 +139,29 @@ function commonRingDelay(chip: ChipModel, run: Run, rings: readonly RingParamete
   return ringDelay;
 }
 
-function endsOf(chip: ChipModel, run: Run, request: RunRequest, variant: Variant): TakenEnds {
+/** Both end couplings, and where they are not as wanted, what was. */
+function endsOf(
+  chip: ChipModel,
+  run: Run,
+  request: RunRequest,
+  { inputCoupling, outputCoupling }: Variant,
+): { readonly taken: TakenEnds; readonly missed: Pick<CellPlan, 'offBalance'> } {
   const [first, last] = [chip.cells[run.first]!, chip.cells[run.last]!];
-  const { inputCoupling, outputCoupling } = variant;
-  return takeEnds({
+  const { port, bothOutputs } = request;
+  const wanted = { inputCoupling, outputCoupling };
+  const taken = takeEnds({
     inputPath: `${first.name}.input.coupling`,
     outputPath: `${last.name}.output.coupling`,
     input: couplerOf(first, 'input'),
     output: couplerOf(last, 'output'),
-    wanted: { inputCoupling, outputCoupling },
-    port: request.port,
-    bothOutputs: request.bothOutputs,
+    wanted,
+    port,
+    bothOutputs,
   });
+  return {
+    taken,
+    missed: taken.couplersOff > 0 ? { offBalance: { ...run, wanted, port, passes: false } } : {},
+  };
 }
 
 function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Variant): PlannedCells {
@@ -162,15 +173,8 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
   const rings = placeRings(slots, [arms[0].rings, arms[1].rings], full, remaining, request.parkAtRad);
   const armPhaseRad = variant.armPhaseRad + Math.PI * (full[0] - full[1]);
   const allSlots = [...slots[0], ...slots[1]];
-  const taken = endsOf(chip, run, request, variant);
+  const { taken, missed } = endsOf(chip, run, request, variant);
   const { couplersOff, nullField } = taken;
-  const { inputCoupling, outputCoupling } = variant;
-  const offBalance = {
-    ...run,
-    wanted: { inputCoupling, outputCoupling },
-    port: request.port,
-    passes: false,
-  };
   const plans: CellPlan[] = [];
   for (let index = run.first; index <= run.last; index++) {
     const cell = chip.cells[index]!;
@@ -193,7 +197,7 @@ function planVariant(chip: ChipModel, run: Run, request: RunRequest, variant: Va
         .map((slot) => rings.plans.get(slot)!),
       carries: ends ? carries : { OUT1: 'ARM', OUT2: 'ARM' },
       parked: rings.parked.filter(({ element }) => element.startsWith(`${cell.name}.`)),
-      ...(ends && couplersOff > 0 ? { offBalance } : {}),
+      ...(ends ? missed : {}),
     });
   }
   return { plans, leak: rings.leak, delayRings: full[0] + full[1], couplersOff, nullField };
