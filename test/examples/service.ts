@@ -79,6 +79,18 @@ export function run(
   });
 }
 
-export async function hasProgram(name: string): Promise<boolean> {
-  return (await run(name, ['--version'], {})).code === 0;
+/** What every program answers with success. Not every awk has a version to tell. */
+const TRIAL: Readonly<Record<string, readonly string[]>> = { awk: ['BEGIN { exit 0 }'] };
+
+/** Which of `programs` this machine has not: Node is all that the project asks for, so their tests are skipped then. */
+export async function missingAmong(programs: readonly string[]): Promise<readonly string[]> {
+  const missing: string[] = [];
+  for (const program of programs)
+    if ((await run(program, TRIAL[program] ?? ['--version'], {})).code !== 0) missing.push(program);
+  return missing;
+}
+
+/** The reason of a skip, for the title of what is skipped. */
+export function notRun(missing: readonly string[]): string {
+  return missing.length === 0 ? '' : ` (not run: ${missing.join(', ')} not installed)`;
 }

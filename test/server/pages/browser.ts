@@ -1,4 +1,5 @@
 /** A real browser with an eye on what a page does behind the reader's back: requests, errors, broken policies. */
+import { existsSync } from 'node:fs';
 import { mkdir } from 'node:fs/promises';
 import { join } from 'node:path';
 import { type Browser, chromium, type Page } from 'playwright-core';
@@ -29,12 +30,18 @@ const VIEWPORT = { width: 1280, height: 800 };
 /** Set by hand to look at the pages: every one that is opened leaves a picture there. */
 const PICTURES = process.env.PAGE_PICTURES;
 
+/** Node is all that the project asks for: without the program these tests are skipped; one that does not start fails them. */
+export const hasBrowser = existsSync(EXECUTABLE);
+
+/** The reason of a skip, for the title of what is skipped. */
+export const notShown = hasBrowser ? '' : ` (not run: ${EXECUTABLE} is not there)`;
+
 export async function launchBrowser(): Promise<Browser> {
   try {
     return await chromium.launch({ executablePath: EXECUTABLE, args: FLAGS });
   } catch (cause) {
     throw new Error(
-      `These tests look at the pages in a real browser, and ${EXECUTABLE} does not start: install Chromium (Debian: apt-get install chromium), or name its program in CHROMIUM.`,
+      `These tests look at the pages in a real browser, and ${EXECUTABLE} does not start: repair it, or name another in CHROMIUM.`,
       { cause },
     );
   }

@@ -4,7 +4,15 @@ import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, it } from
 import { problemPage, problemSlugs } from '../../../server/errors.ts';
 import { type Lab, openLab, SERIAL } from '../graphql/lab.ts';
 import { startNext } from '../rest/computing.ts';
-import { elsewhere, labUrl, launchBrowser, type OpenPage, openPage } from './browser.ts';
+import {
+  elsewhere,
+  hasBrowser,
+  labUrl,
+  launchBrowser,
+  notShown,
+  type OpenPage,
+  openPage,
+} from './browser.ts';
 
 let browser: Browser;
 let lab: Lab;
@@ -41,7 +49,7 @@ async function expectNoSidewaysScroll(page: Page): Promise<void> {
   expect(wider).toBeLessThanOrEqual(OVERFLOW_PX);
 }
 
-describe('/graphiql', () => {
+describe.skipIf(!hasBrowser)(`/graphiql${notShown}`, () => {
   let open: OpenPage;
   let page: Page;
   beforeEach(async () => {
@@ -141,7 +149,7 @@ describe('/graphiql', () => {
   });
 });
 
-describe('/docs', () => {
+describe.skipIf(!hasBrowser)(`/docs${notShown}`, () => {
   it('shows every operation of the document, opens one and asks it with a token', async () => {
     const open = await openPage(browser);
     const { page } = open;
@@ -171,7 +179,7 @@ describe('/docs', () => {
   });
 });
 
-describe('/problems', () => {
+describe.skipIf(!hasBrowser)(`/problems${notShown}`, () => {
   it('explains each kind of problem on a page with its title, code and what to do', async () => {
     const open = await openPage(browser, { width: 480 });
     const { page } = open;
@@ -194,7 +202,7 @@ describe('/problems', () => {
   });
 });
 
-describe('plots', () => {
+describe.skipIf(!hasBrowser)(`plots${notShown}`, () => {
   /** Fewer marks than these, and it would be an empty frame; at least as many words as a scale of four ticks an axis. */
   const PLOTS = {
     transmission: { says: /dB/, lines: 3, symbols: 0, texts: 8 },
@@ -234,7 +242,7 @@ describe('plots', () => {
   });
 });
 
-describe('/openapi.json', () => {
+describe.skipIf(!hasBrowser)(`/openapi.json${notShown}`, () => {
   it('is shown as text, not offered for download', async () => {
     const open = await openPage(browser);
     await open.page.goto(`${base}/openapi.json`);
@@ -245,7 +253,7 @@ describe('/openapi.json', () => {
   });
 });
 
-describe('the watch over the pages', () => {
+describe.skipIf(!hasBrowser)(`the watch over the pages${notShown}`, () => {
   it('sees a picture from elsewhere, and the policy that keeps it out', async () => {
     const open = await openPage(browser);
     await open.page.goto(`${base}/problems/not-found`);
