@@ -30,6 +30,17 @@ function refuseSteps(channel: DriverChannel, needMa: number, mostMa: number): ne
 }
 
 /** Where not all limits can be met: refuses with the channel that would be furthest beyond its own. */
+/** Heat that a channel should have for any phase to be within reach, in turns: one for the phase, the rest for crosstalk. */
+const REACH_TURNS = 1.2;
+
+/** Where the limit itself stands in the way of most settings, whatever is asked. */
+function wholeTurn({ phasePerMw }: DriverChannel, limitMw: number): string {
+  const turnMw = (2 * Math.PI) / phasePerMw;
+  return limitMw >= REACH_TURNS * turnMw
+    ? ''
+    : ` A whole turn of its phase takes ${shown(turnMw)} mW: below ${REACH_TURNS} times that, some phases are always out of reach.`;
+}
+
 function checkLimits(heating: Heating, { solution, floorsKept }: LeastHeat, chip: ChipModel): void {
   if (solution.violationMw === 0) return;
   const { limitMw } = heating.problem;
@@ -47,7 +58,7 @@ function checkLimits(heating: Heating, { solution, floorsKept }: LeastHeat, chip
     limit: limit.kind,
     detail:
       `Channel ${channel.channel} (${channel.drives}) would need ${shown(needMa)} mA, ${shown(needMw)} mW; ` +
-      `its ${byPower ? 'power' : 'current'} limit allows ${shown(limit.currentMa)} mA.`,
+      `its ${byPower ? 'power' : 'current'} limit allows ${shown(limit.currentMa)} mA.${wholeTurn(channel, limitMw[worst]!)}`,
     channel: channel.channel,
     element: channel.drives,
     given: byPower ? needMw : needMa,

@@ -299,6 +299,7 @@ describe('what is refused', () => {
       const { details } = error as Refusal;
       expect(details).toMatchObject({ code: 'SETTING_UNREACHABLE', limit: 'CHANNEL_CURRENT' });
       expect(weak.channels.some((one) => details.detail.includes(one.channel))).toBe(true);
+      expect(details.detail).toMatch(/A whole turn of its phase takes [\d.]+ mW/);
     }
   });
 });
