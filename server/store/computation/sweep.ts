@@ -3,8 +3,8 @@
  *
  * 1. A row of `worker_process` whose lock can be taken belongs to a dead process: the row goes, its jobs are unlocked,
  *    and the queue hands them to somebody else. Without this a job stays locked for four hours.
- * 2. A live computation without a job that will run again has used up its attempts: it fails, with its requests. The
- *    queue leaves an exhausted job unlocked and unrun for ever.
+ * 2. A live computation without a job that will run again has used up its attempts: it fails, with its requests, and
+ *    the exhausted job goes: the queue would leave it unlocked and unrun for ever.
  * 3. An engine that no live worker has served for ten minutes, while workers of another engine are there, was replaced:
  *    its queued computations fail with ENGINE_RETIRED, and can be asked for again. With no worker at all they wait.
  */
@@ -85,7 +85,7 @@ async function failExhausted(tx: Transaction, systemId: string): Promise<number>
      where state in ('QUEUED','RUNNING') and not exists (
        select 1 from graphile_worker.jobs j
        where j.key = c.id::text and (j.locked_at is not null or j.attempts < j.max_attempts))
-     returning id, key`,
+     returning id, key, graphile_worker.remove_job(id::text)`,
     [CRASHED],
   );
   await failRequests(tx, systemId, rows, CRASHED);

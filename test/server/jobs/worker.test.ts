@@ -190,6 +190,7 @@ describe('worker processes', () => {
     const failed = await lab.waitFor(request.id, isFinal);
     expect(failed.problem?.code).toBe('COMPUTATION_CRASHED');
     expect(await attemptsOf(request.computationId)).toBe(3);
+    await expect.poll(jobsLeft).toBe(0);
     expect(worker.child.exitCode).toBeNull();
     const next = await lab.askNew();
     expect((await lab.waitFor(next.id, isFinal)).state).toBe('DONE');
