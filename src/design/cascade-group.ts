@@ -15,7 +15,7 @@ import {
   synthesiseSectionCascade,
 } from '../synthesis/index.ts';
 import { orderOn } from './capacity.ts';
-import { omegaMaskOf, optimiseOver, optionsFor } from './cascade-optimisation.ts';
+import { goalOf, omegaMaskOf, optimiseOver, optionsFor } from './cascade-optimisation.ts';
 import type { TransferFunctionRecord } from './design.ts';
 import type { Group } from './groups.ts';
 import { judge, otherPort } from './judge.ts';
@@ -70,7 +70,13 @@ function realiseCascade(plan: FilterPlan, chip: ChipModel, onProgress: (part: nu
   const optimised = optimiseOver(plan, outputs, mask, { ...options, onProgress });
   const startingCells = [optimised.cells.map((cell) => cell.interferometer)];
   const tradeOff = (tell: (part: number) => void) =>
-    tradeOffOf(plan, outputs, mask, { ...options, startingCells, onProgress: tell }, chip);
+    tradeOffOf(
+      plan,
+      outputs,
+      mask,
+      { ...options, goal: goalOf(mask), startingCells, onProgress: tell },
+      chip,
+    );
   const first = attempt(plan, exact.cells, chip, [`Exact sections: ${exact.reason}`], tradeOff);
   const lossless = optimised.cells.map((cell) => withoutLosses(cell));
   const second = attempt(

@@ -3,6 +3,7 @@ import type { ChipModel } from '../chip/index.ts';
 import { Refusal } from '../errors.ts';
 import type { FilterPlan, OutputPort } from '../filter/index.ts';
 import {
+  type CascadeGoal,
   type CascadeOptions,
   type OmegaMask,
   type OptimisedCascade,
@@ -56,8 +57,12 @@ export function optimiseOver(
   mask: OmegaMask,
   options: Partial<CascadeOptions>,
 ): OptimisedCascade {
-  const goal = mask.reference === 'INPUT' ? 'GREATEST_MARGIN' : 'LEAST_LOSS';
-  return optimiseCascade(plan.filter, outputs, mask, { ...options, goal });
+  return optimiseCascade(plan.filter, outputs, mask, { ...options, goal: goalOf(mask) });
+}
+
+/** A mask that counts from the input limits the loss itself; against the peak nothing else does. */
+export function goalOf(mask: OmegaMask): CascadeGoal {
+  return mask.reference === 'INPUT' ? 'GREATEST_MARGIN' : 'LEAST_LOSS';
 }
 
 /** The reach that all of these couplers have. */

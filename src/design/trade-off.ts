@@ -12,12 +12,15 @@ const STEPS = [0.02, 0.04, 0.08] as const;
 /** Each point is an optimisation of its own; beyond two sections they take too long for a remark. */
 const MOST_SECTIONS = 2;
 
-/** Empty where the filter has no stopband, or no room to move it. `mask`: the one that was optimised over. */
+/**
+ * Empty where the filter has no stopband, or no room to move it. `mask`: the one that was optimised over; `options`: with
+ * the goal it was optimised for, or the change of goal would pass for what the edge saves.
+ */
 export function tradeOffOf(
   plan: FilterPlan,
   outputs: readonly OutputPort[],
   mask: OmegaMask,
-  options: Partial<Omit<CascadeOptions, 'goal'>>,
+  options: Partial<CascadeOptions>,
   chip: ChipModel,
 ): readonly TradeOffRecord[] {
   const { stopEdgeRad, centreRad } = plan;

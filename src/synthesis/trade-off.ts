@@ -1,7 +1,7 @@
 /**
  * What a cascade's insertion loss is, against how far its stopband may begin: near the filter's own stop edge a cliff, not
  * a law. Every point starts from all pairings and from the solution of the edge before, which stays within the next
- * one's demands, so that the loss never rises with the edge.
+ * one's demands, so that the least loss never rises with the edge.
  */
 import type { OutputPort, TransferFunction } from '../filter/index.ts';
 import type { CascadeOptions } from './cascade-options.ts';
@@ -42,15 +42,16 @@ export function passbandMask(ask: PassbandAsk, stopEdgeRad: number): OmegaMask {
 }
 
 /**
- * Least loss at each stop edge, in ascending order of edge; `maskAt` gives the mask of an edge. One optimisation a point,
- * the first started from `startingCells` too. Progress over all points; throws as `optimiseCascade` does.
+ * The loss at each stop edge, in ascending order of edge; `maskAt` gives the mask of an edge. One optimisation a point
+ * towards the same goal (the least loss where none is given), the first started from `startingCells` too. Progress over
+ * all points; throws as `optimiseCascade` does.
  */
 export function cascadeTradeOff(
   filter: TransferFunction,
   outputs: readonly OutputPort[],
   maskAt: (stopEdgeRad: number) => OmegaMask,
   stopEdgesRad: readonly number[],
-  options: Partial<Omit<CascadeOptions, 'goal'>> = {},
+  options: Partial<CascadeOptions> = {},
 ): TradeOffPoint[] {
   const edges = [...stopEdgesRad].sort((a, b) => a - b);
   const points: TradeOffPoint[] = [];
@@ -59,7 +60,6 @@ export function cascadeTradeOff(
     const { onProgress } = options;
     const cascade = optimiseCascade(filter, outputs, maskAt(stopEdgeRad), {
       ...options,
-      goal: 'LEAST_LOSS',
       startingCells: before,
       ...(onProgress ? { onProgress: (share: number) => onProgress((index + share) / edges.length) } : {}),
     });
