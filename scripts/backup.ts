@@ -1,4 +1,5 @@
 /** `npm run backup -- FILE`: the whole library at one moment, while the service runs. Never overwrites. */
+import { once } from 'node:events';
 import { createWriteStream } from 'node:fs';
 import { rm } from 'node:fs/promises';
 import { backup } from '../server/store/index.ts';
@@ -13,10 +14,9 @@ const database = await openDatabaseOfService();
 // Hashes of tokens are in it: for its owner's eyes alone.
 const output = createWriteStream(file, { flags: 'wx', mode: 0o600 });
 let opened = false;
-output.once('open', () => {
-  opened = true;
-});
 try {
+  await once(output, 'open');
+  opened = true;
   const rows = await backup(database.url, output);
   console.log(
     `${file}: ${Object.entries(rows)

@@ -224,7 +224,10 @@ describe('backup and restore', () => {
       expect((await command('backup', library.database.url)).stdout).toContain('release 2');
       expect((await stat(file)).mode & 0o077).toBe(0);
       const bytes = await readFile(file);
-      await expect(command('backup', library.database.url)).rejects.toMatchObject({ code: 1 });
+      await expect(command('backup', library.database.url)).rejects.toMatchObject({
+        code: 1,
+        stderr: expect.stringMatching(/^no backup: EEXIST: .*\n$/),
+      });
       expect(await readFile(file)).toEqual(bytes);
       const url = await fresh();
       expect((await command('restore', url)).stdout).toContain('release 2');
