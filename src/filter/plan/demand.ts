@@ -39,6 +39,7 @@ export function demandOfMask(mask: MaskSpecification, fsrGhz: number): MaskDeman
   refuseCollisions(mask.bands, fsrGhz);
   const output = ownOutput(mask.bands);
   const own = mask.bands.flatMap((band, index) => ownBands(band, index, output, fsrGhz));
+  requireStop(own, output);
   return { demand: lowPassOf(own), output, own };
 }
 
@@ -54,6 +55,21 @@ function requireBands(mask: MaskSpecification): void {
     detail: `The mask has no ${missing}: at least one band needs ${member}.`,
     pointer: '/specification/mask/bands',
     allowed: `at least one band with ${member}`,
+  });
+}
+
+/** A stop on the other output is a pass on this one: with those alone a plain guide would do. */
+function requireStop(own: readonly OwnBand[], output: OutputPort): void {
+  if (own.some((band) => band.kind === 'STOP')) return;
+  const other = output === 'OUT1' ? 'OUT2' : 'OUT1';
+  throw new Refusal({
+    code: 'SPECIFICATION_INVALID',
+    detail:
+      `The mask has no stopband for ${output}: what must not reach ${other} must reach ${output}, so every band ` +
+      `asks light to come out at ${output}. At least one band needs maxTransmissionDb below 0 dB on ${output}, or ` +
+      `minTransmissionDb on ${other}.`,
+    pointer: '/specification/mask/bands',
+    allowed: `at least one band with maxTransmissionDb on ${output} or minTransmissionDb on ${other}`,
   });
 }
 

@@ -182,6 +182,46 @@ describe('masks', () => {
     expect(planFilters({ mask }, 130, WIDE).some((one) => one.plans.length > 0)).toBe(true);
   });
 
+  it('what must pass one output and is kept from the other only is refused: nothing is to be stopped [regression]', () => {
+    for (const low of [-17, 30]) {
+      const bands = [
+        { lowGhz: -17, highGhz: 17, minTransmissionDb: -1, output: 'OUT1' as const },
+        { lowGhz: low, highGhz: low + 34, maxTransmissionDb: -20, output: 'OUT2' as const },
+      ];
+      const { details } = refusalOf({ mask: { reference: 'INPUT', bands } }, 100);
+      expect(details.code).toBe('SPECIFICATION_INVALID');
+      expect(details.detail).toContain('no stopband for OUT1');
+    }
+  });
+
+  it('any mask is planned or refused with its reason, never an error of another kind [property]', () => {
+    const level = fc.option(fc.double({ min: -60, max: -0.01, noNaN: true }), { nil: undefined });
+    const band = fc.record({
+      low: fc.double({ min: -50, max: 50, noNaN: true }),
+      width: fc.double({ min: 0, max: 40, noNaN: true }),
+      least: level,
+      most: level,
+      output: fc.constantFrom('OUT1' as const, 'OUT2' as const),
+    });
+    fc.assert(
+      fc.property(fc.array(band, { minLength: 1, maxLength: 4 }), (drawn) => {
+        const bands = drawn.map(({ low, width, least, most, output }) => ({
+          lowGhz: low,
+          highGhz: low + width,
+          output,
+          ...(least === undefined ? {} : { minTransmissionDb: least }),
+          ...(most === undefined ? {} : { maxTransmissionDb: most }),
+        }));
+        try {
+          planFilters({ mask: { reference: 'INPUT', bands } }, 100, WIDE);
+        } catch (error) {
+          expect(error).toBeInstanceOf(Refusal);
+        }
+      }),
+      { numRuns: 300, seed: 1 },
+    );
+  });
+
   it('two outputs that both must pass the same light are refused for passivity [property]', () => {
     const mask: MaskSpecification = {
       reference: 'INPUT',
