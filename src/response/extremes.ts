@@ -79,6 +79,21 @@ function lowerBound(values: Float64Array, i: number): number {
   return value - Math.max(left - value, right - value, 0);
 }
 
+/**
+ * What rounding does to a power |E|² ≤ 1 of a field with error 1e-15, and to any other curve relative to its size. A flat
+ * or dark response is all hollows of this depth, and none of them is worth a descent.
+ */
+function roundingOf(value: number): number {
+  const size = Math.abs(value);
+  return 1e-14 * Math.max(size, Math.sqrt(size)) + 1e-28;
+}
+
+/**
+ * Descents of one search. A response of 32 rings has fewer hollows than this; if noise of another kind makes more, the
+ * lowest are descended into and the samples of the others stand as they are.
+ */
+const MOST_DESCENTS = 256;
+
 function leastOf(curve: Curve, x: Float64Array, values: Float64Array): Extreme | null {
   const hollows: number[] = [];
   for (let i = 0; i < x.length; i++) {
@@ -96,8 +111,10 @@ function leastOf(curve: Curve, x: Float64Array, values: Float64Array): Extreme |
     return value === undefined || Number.isNaN(value) ? Number.POSITIVE_INFINITY : value;
   };
   let best: Extreme = { at: x[first]!, value: values[first]! };
+  let descents = 0;
   for (const i of hollows) {
-    if (lowerBound(values, i) >= best.value) continue;
+    if (lowerBound(values, i) >= best.value - roundingOf(best.value)) continue;
+    if (++descents > MOST_DESCENTS) break;
     const refined = refineLeast(at, x[i - 1] ?? x[i]!, x[i + 1] ?? x[i]!, x[i]!);
     if (refined.value < best.value) best = refined;
   }
