@@ -93,12 +93,17 @@ async function publish(
   if (version === null) {
     throw notFound(`version ${input.version} of ${configuration.name}`, '/version', input.version);
   }
-  requireAccepted(await risksOf(context, version), accept, body);
+  const risks = await risksOf(context, version);
+  requireAccepted(risks, accept, body);
+  // On record stands what was there to be taken; a list sent along out of habit takes nothing.
+  const isStale = version.chipRevisionNumber < version.headRevision;
+  const applying = [...risks.map(({ code }) => code), ...(isStale ? ['STALE_CHIP_REVISION'] : [])];
+  const accepted = applying.filter((code) => accept.includes(code));
   const idempotency = idempotencyOf('publishRelease', input, body, options);
   const expected = expectedSequence === undefined ? {} : { expectedSequence };
   const published = await store.publishRelease(
     actingOf(viewer),
-    { chipId: chip.id, name, versionId: version.id, note, accepted: [...new Set(accept)], ...expected },
+    { chipId: chip.id, name, versionId: version.id, note, accepted, ...expected },
     idempotency,
   );
   switch (published.outcome) {

@@ -112,6 +112,11 @@ describe('versions and releases', () => {
     expect(refused.allowed).toContain('MASK_NOT_MET');
     const { record } = await lab.operations.publishRelease(mine(), refused.nearest[0]?.input);
     expect(record.accepted).toContain('MASK_NOT_MET');
+    // A code that nothing called for is not on record.
+    const again = await publish(version, {
+      accept: [...record.accepted, 'STALE_CHIP_REVISION', 'NEVER_SEEN'],
+    });
+    expect(again.record.accepted).toEqual(record.accepted);
   });
 
   it('[property] of things that are not there are refused at their place', async () => {
