@@ -215,7 +215,7 @@ describe('tokens and history', () => {
   it('[property] tell who did what, narrowed by chip, actor and action', async () => {
     const filter = { chip: 'X1', action: 'release.published', actor: wireId('act', mine().actor.id) };
     const entries = await lab.operations.listHistory(lab.viewers.READER, { filter });
-    expect(entries.edges.length).toBe(3);
+    expect(entries.edges.length).toBe(4);
     expect(entries.edges.every((edge) => edge.node.actor.name === 'invented designer')).toBe(true);
     expect(await refusalOf(lab.operations.listHistory(lab.viewers.INSTRUMENT, {}))).toMatchObject({
       code: 'FORBIDDEN',
