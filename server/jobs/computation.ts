@@ -28,6 +28,8 @@ import { throttleRising } from './throttle.ts';
 
 /** Progress writes of one computation: two a second. */
 const PROGRESS_INTERVAL_MS = 500;
+/** Most designs take less than this; their one report would only be in the way of the answer. */
+const PROGRESS_QUIET_MS = 100;
 
 export interface ComputationDeps {
   readonly store: Pick<
@@ -141,7 +143,7 @@ async function answerOf(
       (error: unknown) => logger.warn({ err: error }, 'progress not reported'),
     );
   };
-  const progress = throttleRising(report, PROGRESS_INTERVAL_MS);
+  const progress = throttleRising(report, PROGRESS_INTERVAL_MS, PROGRESS_QUIET_MS);
   const deadline = setTimeout(() => stop('TIMED_OUT'), timeoutS * 1000);
   run.recheck = () => report(reached);
   try {

@@ -1,6 +1,7 @@
 /**
  * Lets the newest of many rising values through, at most one an interval, the last one of a burst included. Progress
- * reports are writes with a NOTIFY, and commits with NOTIFY queue behind one lock of the whole database.
+ * reports are writes with a NOTIFY, and commits with NOTIFY queue behind one lock of the whole database. Nothing is sent in
+ * the first `quietMs`: what ends within them needs no report.
  */
 export interface Throttle {
   (value: number): void;
@@ -8,7 +9,7 @@ export interface Throttle {
   stop(): void;
 }
 
-export function throttleRising(send: (value: number) => void, intervalMs: number): Throttle {
+export function throttleRising(send: (value: number) => void, intervalMs: number, quietMs = 0): Throttle {
   let best = 0;
   let sent = 0;
   let timer: NodeJS.Timeout | null = null;
@@ -21,6 +22,10 @@ export function throttleRising(send: (value: number) => void, intervalMs: number
     timer.unref();
     send(best);
   };
+  if (quietMs > 0) {
+    timer = setTimeout(flush, quietMs);
+    timer.unref();
+  }
   const offer = (value: number): void => {
     if (!(value > best)) return;
     best = value;

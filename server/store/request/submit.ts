@@ -35,6 +35,13 @@ interface Attached {
 }
 
 async function lookUp(on: Transaction, key: string): Promise<Known | null> {
+  // Nearly always there is nothing: one question for both.
+  const any = await one<{ known: boolean }>(
+    on,
+    `select exists (select 1 from design where id = $1) or exists (select 1 from refusal where id = $1) as known`,
+    [key],
+  );
+  if (any?.known !== true) return null;
   const design = await readDesign(on, key);
   if (design) return { answer: { outcome: 'DESIGN', design }, row: { state: 'DONE', designId: key } };
   const problem = await readRefusal(on, key);
@@ -64,24 +71,29 @@ async function enqueue(tx: Transaction, computationId: string, engine: string): 
   });
 }
 
-/** Counted without a lock: requests sent at the same instant may pass together, by as many as there are at once. */
-async function isOpenLimitReached(tx: Transaction, by: Acting, limit: number): Promise<boolean> {
-  const mine = by.tokenId === null ? 'token_id is null and created_by = $1' : 'token_id = $1';
-  const count = await one<{ open: number }>(
-    tx,
-    `select count(*)::int as open from (select 1 from request where state in ('QUEUED','RUNNING') and ${mine} limit $2) live`,
-    [by.tokenId ?? by.actorId, limit],
-  );
-  return (count?.open ?? 0) >= limit;
+interface Load {
+  open: number;
+  queued: number;
 }
 
-async function isQueueFull(tx: Transaction, limit: number): Promise<boolean> {
-  const count = await one<{ queued: number }>(
+/**
+ * Live requests of the token and computations that wait, each counted only as far as its limit. Without a lock: requests
+ * sent at the same instant may pass together, by as many as there are at once.
+ */
+async function loadOf(
+  tx: Transaction,
+  by: Acting,
+  limits: { openPerToken: number; queue: number },
+): Promise<Load> {
+  const mine = by.tokenId === null ? 'token_id is null and created_by = $1' : 'token_id = $1';
+  const load = await one<Load>(
     tx,
-    `select count(*)::int as queued from (select 1 from computation where state = 'QUEUED' limit $1) waiting`,
-    [limit + 1],
+    `select
+       (select count(*)::int from (select 1 from request where state in ('QUEUED','RUNNING') and ${mine} limit $2) live) as open,
+       (select count(*)::int from (select 1 from computation where state = 'QUEUED' limit $3) waiting) as queued`,
+    [by.tokenId ?? by.actorId, limits.openPerToken, limits.queue],
   );
-  return (count?.queued ?? 0) > limit;
+  return load ?? { open: 0, queued: 0 };
 }
 
 async function write(
@@ -140,8 +152,9 @@ export const submitRequest =
       }
       const before = idempotency ? await lookUp(tx, ask.key) : null;
       if (before) return write(tx, by, ask, before.row, idempotency);
-      if (await isOpenLimitReached(tx, by, limits.openPerToken)) return undo({ outcome: 'TOO_MANY_OPEN' });
-      await tx.query('savepoint s');
+      const load = await loadOf(tx, by, limits);
+      if (load.open >= limits.openPerToken) return undo({ outcome: 'TOO_MANY_OPEN' });
+      if (idempotency) await tx.query('savepoint s');
       const computation = await attach(tx, ask);
       if (computation.created) {
         const known = await lookUp(tx, ask.key);
@@ -150,7 +163,7 @@ export const submitRequest =
           await tx.query('rollback to s');
           return write(tx, by, ask, known.row, idempotency);
         }
-        if (await isQueueFull(tx, limits.queue)) return undo({ outcome: 'QUEUE_FULL' });
+        if (load.queued >= limits.queue) return undo({ outcome: 'QUEUE_FULL' });
         await enqueue(tx, computation.id, ask.engine);
       }
       return write(tx, by, ask, { state: computation.state, computationId: computation.id }, idempotency);

@@ -23,6 +23,20 @@ describe('progress reports', () => {
     }
   });
 
+  it('keep quiet at first: what ends soon sends none, what lasts sends its newest', async () => {
+    const sent: number[] = [];
+    const brief = throttleRising((value) => sent.push(value), INTERVAL_MS, INTERVAL_MS);
+    brief(0.4);
+    brief.stop();
+    const lasting = throttleRising((value) => sent.push(value), INTERVAL_MS, INTERVAL_MS);
+    lasting(0.1);
+    lasting(0.2);
+    expect(sent).toEqual([]);
+    await sleep(2 * INTERVAL_MS);
+    lasting.stop();
+    expect(sent).toEqual([0.2]);
+  });
+
   it('never fall, never repeat, and take no NaN', async () => {
     const sent: number[] = [];
     const report = throttleRising((value) => sent.push(value), 1);
